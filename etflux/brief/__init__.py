@@ -1,0 +1,1 @@
+"""Figures, maps and the page for briefings. Knows no equation."""

@@ -1,0 +1,1 @@
+"""Parameter tables: CSV and TOML files with their sources."""

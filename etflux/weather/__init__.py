@@ -1,0 +1,1 @@
+"""A station's record: arranged, checked, filled, and given to the counties."""

@@ -1,0 +1,1 @@
+"""Spreadsheets: the template, the reader, the results workbook. Knows no equation."""
