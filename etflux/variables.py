@@ -75,9 +75,7 @@ def units() -> Mapping[str, Unit]:
     """Every unit that is understood, by each of its spellings."""
     found: dict[str, Unit] = {}
     for symbol, row in _table("units.toml").items():
-        unit = Unit(
-            symbol, row["dimension"], row["scale"], row.get("offset", 0.0), tuple(row.get("also", ()))
-        )
+        unit = Unit(symbol, row["dimension"], row["scale"], row.get("offset", 0.0), tuple(row.get("also", ())))
         for spelling in (symbol, *unit.also):
             found[spelling] = unit
     return found
@@ -163,7 +161,4 @@ class Setting:
 def settings_table() -> Mapping[str, Setting]:
     """Every setting, by name, in the order of the settings sheet."""
     rows = _table("settings.toml")
-    return {
-        name: Setting(name=name, **{**row, "choices": tuple(row.get("choices", ()))})
-        for name, row in rows.items()
-    }
+    return {name: Setting(name=name, **{**row, "choices": tuple(row.get("choices", ()))}) for name, row in rows.items()}
