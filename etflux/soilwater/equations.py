@@ -1,0 +1,342 @@
+"""The equations of the soil water balance, one published relation per function.
+
+Depths are mm over the stand's whole area unless a docstring says "per wetted area": the depletion De of the drying
+layer is of the exposed and wetted part of the surface only. NaN in, NaN out; every function broadcasts.
+
+References
+----------
+.. [1] Allen, R.G., Pereira, L.S., Raes, D., Smith, M. (1998), Crop evapotranspiration, FAO Irrigation and Drainage
+   Paper 56. Equation, table and page numbers below are of this paper.
+.. [2] USDA-SCS (1985), National Engineering Handbook, Section 4, Hydrology: the curve number method.
+.. [3] Hawkins, R.H., Hjelmfelt, A.T., Zevenbergen, A.W. (1985), Runoff probability, storm depth, and curve numbers,
+   J. Irrig. Drain. Eng. 111(4): curve numbers I and III from II. From memory.
+.. [4] ASCE Manual 70, 2nd ed. (2016): curve number from the depletion of the drying layer. From memory.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import ArrayLike
+
+TINY = 1e-9
+LEAST_FEW = 0.01  # few is at least this, FAO-56 eq. 75
+RESIDUE_EFFECT = 0.5  # 5 % less evaporation for every 10 % of the ground under residue, FAO-56 ch. 11
+DRIP_SHADE = 2.0 / 3.0  # emitters under the plants, FAO-56 p. 147
+SMALL_RAIN_SHARE = 0.2  # of ETo: evaporates at once and does not wet the drying layer, FAO-56 p. 153
+
+
+def snow_balance(
+    precipitation_mm: ArrayLike, t_mean_c: ArrayLike, snow_mm: ArrayLike, melt_factor_mm: ArrayLike
+) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Hold precipitation of a freezing day and let it melt later (degree-day method; common practice, no source).
+
+    Parameters
+    ----------
+    precipitation_mm, t_mean_c : array_like
+        The day's precipitation [mm] and mean temperature [degC]; below 0 degC all of it is held.
+    snow_mm : array_like
+        Water held since earlier days. [mm]
+    melt_factor_mm : array_like
+        Melt per degree of mean temperature above 0 degC. [mm degC-1 d-1]
+
+    Returns
+    -------
+    water, melt, snow : ndarray
+        Rain and melt that reach the ground, the melt in it, and what is held at the end of the day. [mm]
+
+    Examples
+    --------
+    >>> water, melt, snow = snow_balance([10.0, 3.0], [-4.0, 2.0], [0.0, 10.0], 4.0)
+    >>> water, melt, snow
+    (array([ 0., 11.]), array([0., 8.]), array([10.,  2.]))
+    """
+    precipitation, t_mean, held = (np.asarray(a, float) for a in (precipitation_mm, t_mean_c, snow_mm))
+    frozen = np.where(t_mean < 0.0, precipitation, 0.0)
+    melt = np.minimum(held, np.asarray(melt_factor_mm, float) * np.maximum(t_mean, 0.0))
+    return precipitation - frozen + melt, melt, held + frozen - melt
+
+
+def curve_number_dry(curve_number: ArrayLike) -> np.ndarray:
+    """Curve number for antecedent condition I (dry) from that for II [3]_.
+
+    Examples
+    --------
+    >>> curve_number_dry([100.0, 80.0]).round(1)
+    array([100. ,  63.7])
+    """
+    cn = np.asarray(curve_number, float)
+    return cn / (2.281 - 0.01281 * cn)
+
+
+def curve_number_wet(curve_number: ArrayLike) -> np.ndarray:
+    """Curve number for antecedent condition III (wet) from that for II [3]_.
+
+    Examples
+    --------
+    >>> curve_number_wet([100.0, 80.0]).round(1)
+    array([100. ,  90.4])
+    """
+    cn = np.asarray(curve_number, float)
+    return cn / (0.427 + 0.00573 * cn)
+
+
+def curve_number_today(
+    de_mm: ArrayLike,
+    rew_mm: ArrayLike,
+    tew_mm: ArrayLike,
+    cn_dry: ArrayLike,
+    cn_average: ArrayLike,
+    cn_wet: ArrayLike,
+) -> np.ndarray:
+    """Curve number for the wetness of the drying layer at the day's start [4]_.
+
+    III up to De = 0.5 REW, I from De = 0.7 REW + 0.3 TEW on, linear between them through II half way.
+
+    Examples
+    --------
+    >>> curve_number_today([0.0, 8.25, 19.0], 9.0, 19.0, 63.0, 80.0, 91.0)
+    array([91., 80., 63.])
+    """
+    rew, cn2 = np.asarray(rew_mm, float), np.asarray(cn_average, float)
+    span = 0.2 * rew + 0.3 * np.asarray(tew_mm, float)
+    halves = (np.asarray(de_mm, float) - 0.5 * rew) * (2.0 / span)
+    first = np.minimum(np.maximum(halves, 0.0), 1.0)
+    second = np.minimum(np.maximum(halves - 1.0, 0.0), 1.0)
+    wet = np.asarray(cn_wet, float)
+    return wet + first * (cn2 - wet) + second * (np.asarray(cn_dry, float) - cn2)
+
+
+def runoff(water_mm: ArrayLike, curve_number: ArrayLike) -> np.ndarray:
+    """Runoff of a day's rain and melt by its curve number, initial abstraction 0.2 S [2]_.
+
+    Parameters
+    ----------
+    water_mm : array_like
+        Rain and melt. [mm]
+    curve_number : array_like
+        Above 0, up to 100.
+
+    Returns
+    -------
+    ndarray
+        From 0 to `water_mm`. [mm]
+
+    Examples
+    --------
+    >>> (runoff([6 * 25.4, 2.0], 75.0) / 25.4).round(2)  # TR-55: 3.28 in
+    array([3.28, 0.  ])
+    """
+    water = np.asarray(water_mm, float)
+    retention = 25400.0 / np.asarray(curve_number, float) - 254.0
+    excess = np.maximum(water - 0.2 * retention, 0.0)
+    return excess * excess / np.maximum(water + 0.8 * retention, TINY)
+
+
+def total_evaporable_water(theta_fc: ArrayLike, theta_wp: ArrayLike, evaporation_depth_m: ArrayLike) -> np.ndarray:
+    """Water that evaporation can draw from the drying layer, eq. 73. [mm]
+
+    Examples
+    --------
+    >>> total_evaporable_water(0.23, 0.10, 0.10).item()
+    18.0
+    """
+    available = np.asarray(theta_fc, float) - 0.5 * np.asarray(theta_wp, float)
+    return 1000.0 * available * np.asarray(evaporation_depth_m, float)
+
+
+def evaporation_reduction(de_mm: ArrayLike, tew_mm: ArrayLike, rew_mm: ArrayLike) -> np.ndarray:
+    """Evaporation reduction coefficient Kr, eq. 74: 1 up to De = REW, falling to 0 at De = TEW.
+
+    Examples
+    --------
+    >>> evaporation_reduction([0.0, 9.45, 16.57, 20.0], 20.0, 9.0).round(2)
+    array([1.  , 0.96, 0.31, 0.  ])
+    """
+    tew = np.asarray(tew_mm, float)
+    left = (tew - np.asarray(de_mm, float)) / (tew - np.asarray(rew_mm, float))
+    return np.minimum(np.maximum(left, 0.0), 1.0)
+
+
+def exposed_wetted_fraction(
+    ground_cover: ArrayLike, fw: ArrayLike, is_drip: ArrayLike = False, residue_share: ArrayLike = 0.0
+) -> np.ndarray:
+    """Part of the ground that is exposed, wetted and free of residue, eq. 75.
+
+    Parameters
+    ----------
+    ground_cover : array_like
+        Ground covered by plants fc, 0-0.99.
+    fw : array_like
+        Ground wetted by the last rain or irrigation, 0.01-1.
+    is_drip : array_like of bool
+        Emitters under the plants: fw is shaded, min[1 - fc, (1 - 2/3 fc) fw] (p. 147).
+    residue_share : array_like
+        Ground under crop residue c, 0-1; few is multiplied by 1 - 0.5 c (ch. 11).
+
+    Examples
+    --------
+    >>> exposed_wetted_fraction(0.53, [1.0, 0.3, 0.3], [False, False, True]).round(2)
+    array([0.47, 0.3 , 0.19])
+    """
+    cover = np.asarray(ground_cover, float)
+    shade = DRIP_SHADE * np.asarray(is_drip, float)
+    few = np.maximum(np.minimum(1.0 - cover, (1.0 - shade * cover) * np.asarray(fw, float)), LEAST_FEW)
+    return few * (1.0 - RESIDUE_EFFECT * np.asarray(residue_share, float))
+
+
+def evaporation_coefficient(
+    kr: ArrayLike, kcb: ArrayLike, kc_max: ArrayLike, few: ArrayLike, residue_share: ArrayLike = 0.0
+) -> np.ndarray:
+    """Soil evaporation coefficient Ke, eq. 71, with residue on the ground (ch. 11).
+
+    Examples
+    --------
+    >>> evaporation_coefficient(1.0, 0.9, 1.3, [0.47, 0.30, 0.19]).round(2)
+    array([0.4 , 0.39, 0.25])
+    """
+    kc_top = np.asarray(kc_max, float)
+    bare = 1.0 - RESIDUE_EFFECT * np.asarray(residue_share, float)
+    wanted = np.asarray(kr, float) * (kc_top - np.asarray(kcb, float)) * bare
+    return np.maximum(np.minimum(wanted, np.asarray(few, float) * kc_top), 0.0)
+
+
+def rewet_surface(
+    de_mm: ArrayLike, de_dry_mm: ArrayLike, fw_before: ArrayLike, fw: ArrayLike
+) -> tuple[np.ndarray, np.ndarray]:
+    """Depletion of the wetted and of the dry part of the surface after the wetted part has changed.
+
+    A wetted part that grows takes in ground with the depletion of the part left dry; one that shrinks leaves ground
+    with its own depletion behind. Area-weighted, so that no water appears or vanishes.
+
+    Parameters
+    ----------
+    de_mm, de_dry_mm : array_like
+        Depletion of the drying layer in the wetted part and in the part left dry. [mm, per area of the part]
+    fw_before, fw : array_like
+        Wetted fraction before and now, above 0 to 1.
+
+    Returns
+    -------
+    de, de_dry : ndarray
+        [mm, per area of the part]
+
+    Examples
+    --------
+    >>> de, de_dry = rewet_surface([4.0, 4.0], [18.0, 18.0], [0.4, 1.0], [1.0, 0.4])
+    >>> de.round(1), de_dry.round(1)
+    (array([12.4,  4. ]), array([18.,  4.]))
+    """
+    de, de_dry, before, now = (np.asarray(a, float) for a in (de_mm, de_dry_mm, fw_before, fw))
+    grown = np.maximum(now - before, 0.0)
+    shrunk = np.maximum(before - now, 0.0)
+    de_now = np.where(grown > 0.0, (before * de + grown * de_dry) / np.maximum(now, TINY), de)
+    left_dry = ((1.0 - before) * de_dry + shrunk * de) / np.maximum(1.0 - now, TINY)
+    return de_now, np.where(shrunk > 0.0, left_dry, de_dry)
+
+
+def total_available_water(theta_fc: ArrayLike, theta_wp: ArrayLike, root_depth_m: ArrayLike) -> np.ndarray:
+    """Water that the roots can hold TAW, eq. 82. [mm]
+
+    Examples
+    --------
+    >>> total_available_water(0.32, 0.12, 0.8).round(1).item()
+    160.0
+    """
+    return 1000.0 * (np.asarray(theta_fc, float) - np.asarray(theta_wp, float)) * np.asarray(root_depth_m, float)
+
+
+def depletion_fraction(p_table: ArrayLike, etc_mm: ArrayLike) -> np.ndarray:
+    """Share p of TAW that is taken up without stress, for the day's ETc (p. 162), 0.1-0.8.
+
+    Examples
+    --------
+    >>> depletion_fraction(0.55, [5.0, 9.0, 0.0]).round(2)
+    array([0.55, 0.39, 0.75])
+    """
+    p = np.asarray(p_table, float) + 0.04 * (5.0 - np.asarray(etc_mm, float))
+    return np.minimum(np.maximum(p, 0.1), 0.8)
+
+
+def stress_coefficient(depletion_mm: ArrayLike, taw_mm: ArrayLike, raw_mm: ArrayLike) -> np.ndarray:
+    """Water stress coefficient Ks, eq. 84: 1 up to RAW, falling to 0 at TAW.
+
+    Examples
+    --------
+    >>> stress_coefficient([55.0, 67.0, 160.0, 170.0], 160.0, 64.0).round(2)
+    array([1.  , 0.97, 0.  , 0.  ])
+    """
+    taw = np.asarray(taw_mm, float)
+    left = (taw - np.asarray(depletion_mm, float)) / (taw - np.asarray(raw_mm, float))
+    return np.minimum(np.maximum(left, 0.0), 1.0)
+
+
+def deepen_roots(
+    dr_mm: ArrayLike, ds_mm: ArrayLike, root_depth_before_m: ArrayLike, root_depth_m: ArrayLike, profile_m: ArrayLike
+) -> tuple[np.ndarray, np.ndarray]:
+    """Depletions after the roots have grown into the soil below, which brings what it lacks (p. 173).
+
+    Returns
+    -------
+    dr, ds : ndarray
+        Depletion of the root zone and of the soil below it down to the profile depth; their sum is kept. [mm]
+
+    Examples
+    --------
+    >>> dr, ds = deepen_roots(20.0, 60.0, 0.5, 1.0, 2.0)
+    >>> dr.item(), ds.item()
+    (40.0, 40.0)
+    """
+    ds, before = np.asarray(ds_mm, float), np.asarray(root_depth_before_m, float)
+    grown = np.maximum(np.asarray(root_depth_m, float) - before, 0.0)
+    gained = ds * (grown / np.maximum(np.asarray(profile_m, float) - before, TINY))
+    return np.asarray(dr_mm, float) + gained, ds - gained
+
+
+def shrink_roots(
+    dr_mm: ArrayLike,
+    ds_mm: ArrayLike,
+    surface_depletion_mm: ArrayLike,
+    root_depth_before_m: ArrayLike,
+    root_depth_m: ArrayLike,
+    taw_mm: ArrayLike,
+) -> tuple[np.ndarray, np.ndarray]:
+    """Depletions after the season's end has left a shallower root zone: it keeps its share, the rest goes below.
+
+    Parameters
+    ----------
+    dr_mm, ds_mm : array_like
+        Depletion of the root zone and of the soil below it. [mm]
+    surface_depletion_mm : array_like
+        few De: what evaporation has drawn from the top, which the shallow zone keeps at least. [mm]
+    root_depth_before_m, root_depth_m : array_like
+        Root depth before and now; where it has not shrunk nothing changes. [m]
+    taw_mm : array_like
+        What the new root zone can hold; its depletion is not more. [mm]
+
+    Returns
+    -------
+    dr, ds : ndarray
+        Their sum is kept. [mm]
+
+    Examples
+    --------
+    >>> dr, ds = shrink_roots([80.0, 80.0], 10.0, [12.0, 30.0], 1.2, 0.3, 40.0)
+    >>> dr, ds
+    (array([20., 30.]), array([70., 60.]))
+    """
+    dr, before, now = (np.asarray(a, float) for a in (dr_mm, root_depth_before_m, root_depth_m))
+    share = np.maximum(dr * (now / np.maximum(before, TINY)), surface_depletion_mm)
+    kept = np.where(now < before, np.minimum(np.minimum(share, taw_mm), dr), dr)
+    return kept, np.asarray(ds_mm, float) + (dr - kept)
+
+
+def days_to_stress(depletion_mm: ArrayLike, raw_mm: ArrayLike, et_mean_mm: ArrayLike) -> np.ndarray:
+    """Days until the readily available water is used at the recent rate; 0 is now. [d]
+
+    Examples
+    --------
+    >>> days_to_stress([30.0, 70.0], 60.0, 6.0)
+    array([5., 0.])
+    """
+    left = np.maximum(np.asarray(raw_mm, float) - np.asarray(depletion_mm, float), 0.0)
+    return left / np.maximum(np.asarray(et_mean_mm, float), 0.01)
