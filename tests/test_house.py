@@ -16,7 +16,7 @@ PACKAGE = Path(etflux.__file__).parent
 
 # A module may import from rooms named before its own, never from later ones.
 ROOMS = [
-    "__init__", "variables", "findings", "humidity", "solar", "reference", "case", "weather", "stands", "marks",
+    "__init__", "variables", "findings", "humidity", "solar", "reference", "case", "outlines", "weather", "stands", "marks",
     "crops", "irrigation", "soilwater", "counties", "profiles", "column", "wind", "airmass", "checks", "results",
     "run", "workbook", "brief", "cli",
 ]  # fmt: skip

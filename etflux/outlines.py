@@ -1,0 +1,235 @@
+"""County outlines: read from GeoJSON, shapefile or TopoJSON, measured, and joined to counties by id.
+
+Rings are (vertex, 2) arrays of longitude and latitude in degrees, first vertex repeated at the end. Areas are
+those of the drawn outline on a sphere; a generalised outline is a little off the surveyed area, so they are called
+outline areas wherever they are shown.
+"""
+
+from __future__ import annotations
+
+import json
+import math
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass
+from functools import cache
+from importlib.resources import files
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+
+from etflux.findings import CannotRead
+
+EARTH_RADIUS_KM = 6371.0088  # mean radius, IUGG
+ID_PROPERTIES = ("county_id", "GEOID", "geoid", "GEOID10", "GEOID20", "id", "ID")
+NAME_PROPERTIES = ("name", "NAME", "Name")
+LARGEST_FILE_BYTES = 60_000_000
+
+Polygon = tuple[np.ndarray, ...]  # an outer ring, then its holes
+
+
+@dataclass(frozen=True)
+class Outline:
+    """One county's polygons with its id and name."""
+
+    county_id: str
+    name: str
+    polygons: tuple[Polygon, ...]
+
+
+@dataclass(frozen=True)
+class Border:
+    """A stretch of border that two counties share.
+
+    `normal` points from the first county to the second, east and north components, length 1.
+    """
+
+    first: str
+    second: str
+    length_km: float
+    normal: tuple[float, float]
+
+
+def read(path: Path) -> dict[str, Outline]:
+    """Outlines of a file, by county id.
+
+    Parameters
+    ----------
+    path : Path
+        GeoJSON (.geojson, .json), TopoJSON (.topojson, .json) or shapefile (.shp) in degrees.
+
+    Raises
+    ------
+    CannotRead
+        If the file is missing, too large, not of these formats, or has coordinates that are no degrees.
+    """
+    try:
+        size = path.stat().st_size
+    except OSError as error:
+        raise CannotRead(f"{path.name}: cannot be opened ({error.strerror}). Put it beside the workbook.") from error
+    if size > LARGEST_FILE_BYTES:
+        raise CannotRead(f"{path.name}: {size / 1e6:.0f} MB is more than the {LARGEST_FILE_BYTES / 1e6:.0f} MB read.")
+    if path.suffix.lower() == ".shp":
+        return _from_features(_shapefile_features(path), path.name)
+    try:
+        document = json.loads(path.read_text(encoding="utf-8-sig"))
+    except (UnicodeDecodeError, ValueError, RecursionError) as error:
+        raise CannotRead(f"{path.name}: is not JSON. Save the outlines as GeoJSON or a shapefile.") from error
+    kind = document.get("type") if isinstance(document, dict) else None
+    if kind == "Topology":
+        return from_topojson(document, next(iter(document.get("objects", {})), ""))
+    if kind != "FeatureCollection" or not isinstance(document.get("features"), list):
+        raise CannotRead(f"{path.name}: is not a GeoJSON feature collection.")
+    return _from_features(document["features"], path.name)
+
+
+def from_topojson(topology: Mapping[str, Any], layer: str) -> dict[str, Outline]:
+    """Outlines of one layer of a TopoJSON document, whose shared arcs stay shared to the last bit."""
+    scale = np.asarray(topology.get("transform", {}).get("scale", (1.0, 1.0)))
+    shift = np.asarray(topology.get("transform", {}).get("translate", (0.0, 0.0)))
+    quantized = "transform" in topology
+    arcs = [
+        (np.cumsum(arc, axis=0) if quantized else np.asarray(arc, dtype=float)) * scale + shift
+        for arc in topology["arcs"]
+    ]
+
+    def ring(indices: Iterable[int]) -> np.ndarray:
+        parts = [arcs[i] if i >= 0 else arcs[~i][::-1] for i in indices]
+        return np.concatenate([parts[0], *(part[1:] for part in parts[1:])])
+
+    found = {}
+    for geometry in topology["objects"][layer]["geometries"]:
+        if geometry.get("type") == "Polygon":
+            shapes = [geometry["arcs"]]
+        elif geometry.get("type") == "MultiPolygon":
+            shapes = geometry["arcs"]
+        else:
+            continue
+        polygons = tuple(tuple(ring(indices) for indices in shape) for shape in shapes)
+        properties = geometry.get("properties") or {}
+        county_id = str(geometry.get("id", properties.get("id", "")))
+        found[county_id] = Outline(county_id, str(properties.get("name", county_id)), polygons)
+    return found
+
+
+def _from_features(features: Iterable[Mapping[str, Any]], file_name: str) -> dict[str, Outline]:
+    found: dict[str, Outline] = {}
+    for number, feature in enumerate(features, start=1):
+        geometry = feature.get("geometry") or {}
+        shapes = {"Polygon": lambda g: [g["coordinates"]], "MultiPolygon": lambda g: g["coordinates"]}
+        if geometry.get("type") not in shapes:
+            continue
+        properties = feature.get("properties") or {}
+        keys = [key for key in ID_PROPERTIES if properties.get(key) not in (None, "")]
+        county_id = str(properties[keys[0]] if keys else feature.get("id", ""))
+        if not county_id:
+            wanted = ", ".join(ID_PROPERTIES[:3])
+            raise CannotRead(f"{file_name}: outline {number} has no id. Give it one of the properties {wanted}.")
+        name = next((str(properties[key]) for key in NAME_PROPERTIES if properties.get(key)), county_id)
+        try:
+            polygons = tuple(
+                tuple(np.asarray(ring, dtype=float)[:, :2] for ring in shape)
+                for shape in shapes[geometry["type"]](geometry)
+            )
+        except (ValueError, TypeError, IndexError, KeyError) as error:
+            raise CannotRead(f"{file_name}: outline {county_id!r} has broken coordinates.") from error
+        for ring in (ring for polygon in polygons for ring in polygon):
+            if len(ring) < 4 or not np.isfinite(ring).all() or (np.abs(ring).max(axis=0) > (180.0, 90.0)).any():
+                raise CannotRead(f"{file_name}: outline {county_id!r} is not in degrees of longitude and latitude.")
+        earlier = found.get(county_id)
+        found[county_id] = Outline(county_id, name, (earlier.polygons if earlier else ()) + polygons)
+    if not found:
+        raise CannotRead(f"{file_name}: has no polygons.")
+    return found
+
+
+def _shapefile_features(path: Path) -> Iterable[Mapping[str, Any]]:
+    import shapefile
+
+    try:
+        with shapefile.Reader(str(path)) as reader:
+            return [row.__geo_interface__ for row in reader.iterShapeRecords()]
+    except (shapefile.ShapefileException, OSError, UnicodeDecodeError, ValueError) as error:
+        raise CannotRead(f"{path.name}: is not a readable shapefile (.shp with .dbf and .shx beside it).") from error
+
+
+def _ring_moments(ring: np.ndarray) -> tuple[float, float, float]:
+    """Signed area in km2 of a ring on the sphere, and its first moments about longitude and sine of latitude."""
+    x = np.radians(ring[:, 0])
+    y = np.sin(np.radians(ring[:, 1]))  # Lambert's cylindrical equal-area ordinate
+    x0, y0 = x[0], y[0]
+    x, y = x - x0, y - y0
+    cross = x[:-1] * y[1:] - x[1:] * y[:-1]
+    area = 0.5 * cross.sum()
+    if area == 0.0:
+        return 0.0, 0.0, 0.0
+    cx = ((x[:-1] + x[1:]) * cross).sum() / (6.0 * area) + x0
+    cy = ((y[:-1] + y[1:]) * cross).sum() / (6.0 * area) + y0
+    km2 = area * EARTH_RADIUS_KM**2
+    return km2, km2 * cx, km2 * cy
+
+
+def area_and_centroid(outline: Outline) -> tuple[float, float, float]:
+    """Outline area on the sphere and its centroid.
+
+    Returns
+    -------
+    area_km2, latitude_deg, longitude_deg : float
+
+    Examples
+    --------
+    A square of one degree at the equator:
+
+    >>> square = np.array([[0, 0], [1, 0], [1, 1], [0, 1], [0, 0]], float)
+    >>> area, lat, lon = area_and_centroid(Outline("a", "a", ((square,),)))
+    >>> round(area, 1), round(lat, 3), round(lon, 3)
+    (12363.7, 0.5, 0.5)
+    """
+    total = mx = my = 0.0
+    for polygon in outline.polygons:
+        for position, ring in enumerate(polygon):
+            km2, x, y = _ring_moments(ring)
+            sign = math.copysign(1.0, km2) * (1.0 if position == 0 else -1.0)
+            total, mx, my = total + sign * km2, mx + sign * x, my + sign * y
+    return total, math.degrees(math.asin(my / total)), math.degrees(mx / total)
+
+
+def shared_borders(outlines: Mapping[str, Outline]) -> list[Border]:
+    """Stretches of border that two counties share, from identical vertices.
+
+    A segment belongs to two counties when both draw it between the same two vertices; outlines that were simplified
+    county by county share none, and the caller must fall back on centroids.
+    """
+    owner: dict[tuple[tuple[float, float], tuple[float, float]], tuple[str, np.ndarray, np.ndarray]] = {}
+    borders = []
+    for county_id, outline in outlines.items():
+        for polygon in outline.polygons:
+            for position, ring in enumerate(polygon):
+                forward = (_ring_moments(ring)[0] > 0.0) == (position == 0)
+                points = ring if forward else ring[::-1]  # interior on the left
+                for start, end in zip(points[:-1], points[1:], strict=True):
+                    a, b = (float(start[0]), float(start[1])), (float(end[0]), float(end[1]))
+                    if a == b:
+                        continue
+                    other = owner.pop((b, a), None)
+                    if other is None or other[0] == county_id:
+                        owner[(a, b)] = (county_id, start, end)
+                        continue
+                    borders.append(_border(county_id, other[0], start, end))
+    return borders
+
+
+def _border(first: str, second: str, start: np.ndarray, end: np.ndarray) -> Border:
+    east = math.radians(end[0] - start[0]) * math.cos(math.radians(0.5 * (start[1] + end[1]))) * EARTH_RADIUS_KM
+    north = math.radians(end[1] - start[1]) * EARTH_RADIUS_KM
+    length = math.hypot(east, north)
+    return Border(first, second, length, (north / length, -east / length))
+
+
+@cache
+def us_counties() -> Mapping[str, Outline]:
+    """Outlines of the counties of the United States, by five-digit GEOID (``tables/us_counties.md`` has the source)."""
+    import gzip
+
+    packed = files("etflux.tables").joinpath("us_counties.topojson.gz").read_bytes()
+    return from_topojson(json.loads(gzip.decompress(packed)), "counties")
