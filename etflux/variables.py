@@ -139,6 +139,29 @@ def from_si(values: ArrayLike, name: str, system: System) -> np.ndarray:
     return np.array(values, dtype=float) if unit == row.unit else convert(values, row.unit, unit, row.kind)
 
 
+@cache
+def flag_bits(registry: str) -> Mapping[str, int]:
+    """Bits of one registry of ``tables/flags.toml`` ("source", "provisional" or "air"), by name."""
+    return {name: row["bit"] for name, row in _table("flags.toml")[registry].items()}
+
+
+@cache
+def flag_words(registry: str) -> Mapping[int, str]:
+    """What each bit of a registry means, in words for people."""
+    return {row["bit"]: row["words"] for row in _table("flags.toml")[registry].values()}
+
+
+def words_of(bits: int, registry: str) -> list[str]:
+    """Words of every bit that is set.
+
+    Examples
+    --------
+    >>> words_of(3, "source")
+    ['from a neighbour station', 'estimated by a published equation']
+    """
+    return [words for bit, words in flag_words(registry).items() if bit and int(bits) & bit]
+
+
 @dataclass(frozen=True)
 class Setting:
     """One row of the registry of settings: every choice of method that a user may change."""
