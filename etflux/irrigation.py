@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from functools import cached_property
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -47,11 +48,10 @@ class Rule:
     fill_to_share : ndarray
         Fill to this share of all available water, 0-1.
     least_mm, most_mm : ndarray
-        Net depth at once; less than the least is not brought, the rule waits. `most_mm` 0: no rule. [mm]
+        Net depth at once, `most_mm` also by what the system brings in the shortest interval; less than the least is
+        not brought, the rule waits. `most_mm` 0: no rule. [mm]
     shortest_interval_d : ndarray
         Days from one irrigation to the next at least. [d]
-    capacity_mm_d : ndarray
-        Gross depth the system brings in a day; one irrigation brings at most what it can in the interval. [mm d-1]
     rain_room_mm : ndarray
         Net depth left unfilled for rain. [mm]
     season_limit_mm : ndarray
@@ -64,9 +64,18 @@ class Rule:
     least_mm: np.ndarray
     most_mm: np.ndarray
     shortest_interval_d: np.ndarray
-    capacity_mm_d: np.ndarray
     rain_room_mm: np.ndarray
     season_limit_mm: np.ndarray
+
+    @cached_property
+    def used_share(self) -> np.ndarray:
+        """Share of the readily available water that is used when irrigation starts."""
+        return 1.0 - self.start_below_share
+
+    @cached_property
+    def unfilled_share(self) -> np.ndarray:
+        """Share of all available water that is left unfilled."""
+        return 1.0 - self.fill_to_share
 
 
 @dataclass(frozen=True)
@@ -111,19 +120,13 @@ def rule_depth(
     ndarray
         0 where nothing is due; NaN where the depletion is NaN. [mm]
     """
-    dr, taw, share = np.asarray(dr_mm, float), np.asarray(taw_mm, float), np.asarray(efficiency, float)
-    allowed = np.where(
-        late, rule.late_depletion_share * taw, (1.0 - rule.start_below_share) * np.asarray(raw_mm, float)
-    )
-    unfilled = np.maximum((1.0 - rule.fill_to_share) * taw, rule.rain_room_mm)
-    at_once = np.minimum(
-        rule.capacity_mm_d * np.maximum(rule.shortest_interval_d, 1.0),
-        rule.season_limit_mm - np.asarray(season_gross_mm, float),
-    )
-    depth = np.minimum(dr - unfilled, np.minimum(rule.most_mm, share * at_once))
-    due = np.logical_and(in_window, dr >= allowed)
-    due = due & (np.asarray(days_since) >= rule.shortest_interval_d) & (depth >= rule.least_mm)
-    return np.maximum(np.where(due | np.isnan(dr), depth, 0.0), 0.0)
+    dr, taw = np.asarray(dr_mm, float), np.asarray(taw_mm, float)
+    allowed = np.where(late, rule.late_depletion_share * taw, rule.used_share * np.asarray(raw_mm, float))
+    due = (dr >= allowed) & np.asarray(in_window) & (np.asarray(days_since) >= rule.shortest_interval_d)
+    unfilled = np.maximum(rule.unfilled_share * taw, rule.rain_room_mm)
+    within_limit = (rule.season_limit_mm - np.asarray(season_gross_mm, float)) * np.asarray(efficiency, float)
+    depth = np.minimum(dr - unfilled, np.minimum(rule.most_mm, within_limit))
+    return np.maximum(depth, 0.0) * (due & (depth >= rule.least_mm))
 
 
 def gross_parts(
@@ -148,14 +151,14 @@ def gross_parts(
 
     Examples
     --------
-    >>> gross, to_air, below = gross_parts(15.0, 0.75, [True, False])
+    >>> gross, to_air, below = gross_parts([15.0, 15.0], 0.75, [True, False])
     >>> gross, to_air, below
     (array([20., 20.]), array([5., 0.]), array([0., 5.]))
     """
-    net, sprinkled = np.broadcast_arrays(np.asarray(net_mm, float), np.asarray(loss_to_air, bool))
+    net = np.asarray(net_mm, float)
     gross = net / np.asarray(efficiency, float)
     loss = gross - net
-    to_air = np.where(sprinkled, loss, 0.0)
+    to_air = loss * np.asarray(loss_to_air, float)
     return gross, to_air, loss - to_air
 
 
@@ -189,7 +192,7 @@ def rules_for_units(units: pd.DataFrame, rules: pd.DataFrame) -> Rule:
     Parameters
     ----------
     units : DataFrame
-        Columns rule_id and irrigated; a unit whose irrigated is False has no rule.
+        Columns rule_id, efficiency (net over gross) and irrigated; a unit whose irrigated is False has no rule.
     rules : DataFrame
         The table irrigation_rules of a case; blanks mean :data:`DEFAULTS`.
 
@@ -200,7 +203,7 @@ def rules_for_units(units: pd.DataFrame, rules: pd.DataFrame) -> Rule:
     by_id = rules.drop_duplicates("rule_id").set_index("rule_id")
     position = np.full(len(units), -1)
     if "rule_id" in units:
-        position = by_id.index.get_indexer(units["rule_id"].array)  # type: ignore[arg-type]
+        position = by_id.index.get_indexer(units["rule_id"].array)
     has = position >= 0
     if "irrigated" in units:
         has &= units["irrigated"].to_numpy(bool)
@@ -210,14 +213,15 @@ def rules_for_units(units: pd.DataFrame, rules: pd.DataFrame) -> Rule:
         given = np.append(np.where(np.isnan(given), DEFAULTS[name], given), DEFAULTS[name])
         return given[position] * scale
 
+    system = column("capacity_mm_d") * np.maximum(column("shortest_interval_d"), 1.0)
+    most = np.minimum(column("most_mm"), system * units["efficiency"].to_numpy(float))
     return Rule(
         start_below_share=column("start_below_pct", 0.01),
         late_depletion_share=column("late_depletion_pct", 0.01),
         fill_to_share=column("fill_to_pct", 0.01),
         least_mm=column("least_mm"),
-        most_mm=np.where(has, column("most_mm"), 0.0),
+        most_mm=np.where(has, most, 0.0),
         shortest_interval_d=column("shortest_interval_d"),
-        capacity_mm_d=column("capacity_mm_d"),
         rain_room_mm=column("rain_room_mm"),
         season_limit_mm=column("season_limit_mm"),
     )

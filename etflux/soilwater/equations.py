@@ -18,11 +18,24 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import ArrayLike
 
+# numpy is quicker with 0-d arrays than with Python numbers, and with these two steps than with its clip.
+ZERO, ONE, LEAST_P, MOST_P = (np.array(number) for number in (0.0, 1.0, 0.1, 0.8))
 TINY = 1e-9
 LEAST_FEW = 0.01  # few is at least this, FAO-56 eq. 75
 RESIDUE_EFFECT = 0.5  # 5 % less evaporation for every 10 % of the ground under residue, FAO-56 ch. 11
 DRIP_SHADE = 2.0 / 3.0  # emitters under the plants, FAO-56 p. 147
 SMALL_RAIN_SHARE = 0.2  # of ETo: evaporates at once and does not wet the drying layer, FAO-56 p. 153
+
+
+def unit_interval(values: ArrayLike) -> np.ndarray:
+    """Values brought into 0-1; NaN stays.
+
+    Examples
+    --------
+    >>> unit_interval([-0.2, 0.5, float("nan"), 3.0])
+    array([0. , 0.5, nan, 1. ])
+    """
+    return np.minimum(np.maximum(values, ZERO), ONE)
 
 
 def snow_balance(
@@ -51,8 +64,8 @@ def snow_balance(
     (array([ 0., 11.]), array([0., 8.]), array([10.,  2.]))
     """
     precipitation, t_mean, held = (np.asarray(a, float) for a in (precipitation_mm, t_mean_c, snow_mm))
-    frozen = np.where(t_mean < 0.0, precipitation, 0.0)
-    melt = np.minimum(held, np.asarray(melt_factor_mm, float) * np.maximum(t_mean, 0.0))
+    frozen = np.where(t_mean < 0.0, precipitation, ZERO)
+    melt = np.minimum(held, np.asarray(melt_factor_mm, float) * np.maximum(t_mean, ZERO))
     return precipitation - frozen + melt, melt, held + frozen - melt
 
 
@@ -80,29 +93,51 @@ def curve_number_wet(curve_number: ArrayLike) -> np.ndarray:
     return cn / (0.427 + 0.00573 * cn)
 
 
+def wetness_limits(rew_mm: ArrayLike, tew_mm: ArrayLike) -> tuple[np.ndarray, np.ndarray]:
+    """Depletion of the drying layer up to which antecedent condition III holds, and from which I does [4]_. [mm]
+
+    Examples
+    --------
+    >>> wet, dry = wetness_limits(9.0, 19.0)
+    >>> wet.item(), dry.item()
+    (4.5, 12.0)
+    """
+    rew = np.asarray(rew_mm, float)
+    return np.asarray(0.5 * rew), np.asarray(0.7 * rew + 0.3 * np.asarray(tew_mm, float))
+
+
 def curve_number_today(
     de_mm: ArrayLike,
-    rew_mm: ArrayLike,
-    tew_mm: ArrayLike,
+    wet_limit_mm: ArrayLike,
+    dry_limit_mm: ArrayLike,
     cn_dry: ArrayLike,
     cn_average: ArrayLike,
     cn_wet: ArrayLike,
 ) -> np.ndarray:
     """Curve number for the wetness of the drying layer at the day's start [4]_.
 
-    III up to De = 0.5 REW, I from De = 0.7 REW + 0.3 TEW on, linear between them through II half way.
+    Parameters
+    ----------
+    de_mm : array_like
+        Depletion of the drying layer. [mm]
+    wet_limit_mm, dry_limit_mm : array_like
+        Of :func:`wetness_limits`. [mm]
+    cn_dry, cn_average, cn_wet : array_like
+        Curve numbers for antecedent conditions I, II and III.
+
+    Returns
+    -------
+    ndarray
+        III up to the wet limit, I from the dry limit on, linear between them through II half way.
 
     Examples
     --------
-    >>> curve_number_today([0.0, 8.25, 19.0], 9.0, 19.0, 63.0, 80.0, 91.0)
+    >>> curve_number_today([0.0, 8.25, 19.0], 4.5, 12.0, 63.0, 80.0, 91.0)
     array([91., 80., 63.])
     """
-    rew, cn2 = np.asarray(rew_mm, float), np.asarray(cn_average, float)
-    span = 0.2 * rew + 0.3 * np.asarray(tew_mm, float)
-    halves = (np.asarray(de_mm, float) - 0.5 * rew) * (2.0 / span)
-    first = np.minimum(np.maximum(halves, 0.0), 1.0)
-    second = np.minimum(np.maximum(halves - 1.0, 0.0), 1.0)
-    wet = np.asarray(cn_wet, float)
+    wet, cn2, limit = (np.asarray(a, float) for a in (cn_wet, cn_average, wet_limit_mm))
+    halves = (np.asarray(de_mm, float) - limit) / (0.5 * (np.asarray(dry_limit_mm, float) - limit))
+    first, second = unit_interval(halves), unit_interval(halves - ONE)
     return wet + first * (cn2 - wet) + second * (np.asarray(cn_dry, float) - cn2)
 
 
@@ -128,8 +163,8 @@ def runoff(water_mm: ArrayLike, curve_number: ArrayLike) -> np.ndarray:
     """
     water = np.asarray(water_mm, float)
     retention = 25400.0 / np.asarray(curve_number, float) - 254.0
-    excess = np.maximum(water - 0.2 * retention, 0.0)
-    return excess * excess / np.maximum(water + 0.8 * retention, TINY)
+    excess = np.maximum(water - 0.2 * retention, ZERO)
+    return excess * excess / np.maximum(excess + retention, TINY)
 
 
 def total_evaporable_water(theta_fc: ArrayLike, theta_wp: ArrayLike, evaporation_depth_m: ArrayLike) -> np.ndarray:
@@ -153,12 +188,22 @@ def evaporation_reduction(de_mm: ArrayLike, tew_mm: ArrayLike, rew_mm: ArrayLike
     array([1.  , 0.96, 0.31, 0.  ])
     """
     tew = np.asarray(tew_mm, float)
-    left = (tew - np.asarray(de_mm, float)) / (tew - np.asarray(rew_mm, float))
-    return np.minimum(np.maximum(left, 0.0), 1.0)
+    return unit_interval((tew - np.asarray(de_mm, float)) / (tew - np.asarray(rew_mm, float)))
+
+
+def bare_share(residue_share: ArrayLike) -> np.ndarray:
+    """Part of the evaporation that crop residue on the ground lets through: 5 % less for every 10 % (ch. 11).
+
+    Examples
+    --------
+    >>> bare_share([0.0, 0.1, 0.6])
+    array([1.  , 0.95, 0.7 ])
+    """
+    return 1.0 - RESIDUE_EFFECT * np.asarray(residue_share, float)
 
 
 def exposed_wetted_fraction(
-    ground_cover: ArrayLike, fw: ArrayLike, is_drip: ArrayLike = False, residue_share: ArrayLike = 0.0
+    ground_cover: ArrayLike, fw: ArrayLike, drip_shade: ArrayLike = 0.0, bare_share: ArrayLike = 1.0
 ) -> np.ndarray:
     """Part of the ground that is exposed, wetted and free of residue, eq. 75.
 
@@ -168,26 +213,26 @@ def exposed_wetted_fraction(
         Ground covered by plants fc, 0-0.99.
     fw : array_like
         Ground wetted by the last rain or irrigation, 0.01-1.
-    is_drip : array_like of bool
-        Emitters under the plants: fw is shaded, min[1 - fc, (1 - 2/3 fc) fw] (p. 147).
-    residue_share : array_like
-        Ground under crop residue c, 0-1; few is multiplied by 1 - 0.5 c (ch. 11).
+    drip_shade : array_like
+        :data:`DRIP_SHADE` for emitters under the plants, whose wet ground is shaded: min[1 - fc, (1 - 2/3 fc) fw]
+        (p. 147); else 0.
+    bare_share : array_like
+        Of :func:`bare_share`; multiplies few.
 
     Examples
     --------
-    >>> exposed_wetted_fraction(0.53, [1.0, 0.3, 0.3], [False, False, True]).round(2)
+    >>> exposed_wetted_fraction(0.53, [1.0, 0.3, 0.3], [0.0, 0.0, DRIP_SHADE]).round(2)
     array([0.47, 0.3 , 0.19])
     """
     cover = np.asarray(ground_cover, float)
-    shade = DRIP_SHADE * np.asarray(is_drip, float)
-    few = np.maximum(np.minimum(1.0 - cover, (1.0 - shade * cover) * np.asarray(fw, float)), LEAST_FEW)
-    return few * (1.0 - RESIDUE_EFFECT * np.asarray(residue_share, float))
+    wetted = (1.0 - np.asarray(drip_shade, float) * cover) * np.asarray(fw, float)
+    return np.maximum(np.minimum(1.0 - cover, wetted), LEAST_FEW) * np.asarray(bare_share, float)
 
 
 def evaporation_coefficient(
-    kr: ArrayLike, kcb: ArrayLike, kc_max: ArrayLike, few: ArrayLike, residue_share: ArrayLike = 0.0
+    kr: ArrayLike, kcb: ArrayLike, kc_max: ArrayLike, few: ArrayLike, bare_share: ArrayLike = 1.0
 ) -> np.ndarray:
-    """Soil evaporation coefficient Ke, eq. 71, with residue on the ground (ch. 11).
+    """Soil evaporation coefficient Ke, eq. 71; residue on the ground also holds back the energy (ch. 11).
 
     Examples
     --------
@@ -195,9 +240,8 @@ def evaporation_coefficient(
     array([0.4 , 0.39, 0.25])
     """
     kc_top = np.asarray(kc_max, float)
-    bare = 1.0 - RESIDUE_EFFECT * np.asarray(residue_share, float)
-    wanted = np.asarray(kr, float) * (kc_top - np.asarray(kcb, float)) * bare
-    return np.maximum(np.minimum(wanted, np.asarray(few, float) * kc_top), 0.0)
+    wanted = np.asarray(kr, float) * (kc_top - np.asarray(kcb, float)) * np.asarray(bare_share, float)
+    return np.minimum(wanted, np.asarray(few, float) * kc_top)
 
 
 def rewet_surface(
@@ -227,11 +271,10 @@ def rewet_surface(
     (array([12.4,  4. ]), array([18.,  4.]))
     """
     de, de_dry, before, now = (np.asarray(a, float) for a in (de_mm, de_dry_mm, fw_before, fw))
-    grown = np.maximum(now - before, 0.0)
-    shrunk = np.maximum(before - now, 0.0)
-    de_now = np.where(grown > 0.0, (before * de + grown * de_dry) / np.maximum(now, TINY), de)
-    left_dry = ((1.0 - before) * de_dry + shrunk * de) / np.maximum(1.0 - now, TINY)
-    return de_now, np.where(shrunk > 0.0, left_dry, de_dry)
+    change, drier = now - before, de_dry - de
+    taken_in = np.maximum(change, ZERO) / now
+    left_behind = np.minimum(change, ZERO) / np.maximum(1.0 - now, TINY)
+    return de + taken_in * drier, de_dry + left_behind * drier
 
 
 def total_available_water(theta_fc: ArrayLike, theta_wp: ArrayLike, root_depth_m: ArrayLike) -> np.ndarray:
@@ -254,7 +297,7 @@ def depletion_fraction(p_table: ArrayLike, etc_mm: ArrayLike) -> np.ndarray:
     array([0.55, 0.39, 0.75])
     """
     p = np.asarray(p_table, float) + 0.04 * (5.0 - np.asarray(etc_mm, float))
-    return np.minimum(np.maximum(p, 0.1), 0.8)
+    return np.minimum(np.maximum(p, LEAST_P), MOST_P)
 
 
 def stress_coefficient(depletion_mm: ArrayLike, taw_mm: ArrayLike, raw_mm: ArrayLike) -> np.ndarray:
@@ -266,8 +309,7 @@ def stress_coefficient(depletion_mm: ArrayLike, taw_mm: ArrayLike, raw_mm: Array
     array([1.  , 0.97, 0.  , 0.  ])
     """
     taw = np.asarray(taw_mm, float)
-    left = (taw - np.asarray(depletion_mm, float)) / (taw - np.asarray(raw_mm, float))
-    return np.minimum(np.maximum(left, 0.0), 1.0)
+    return unit_interval((taw - np.asarray(depletion_mm, float)) / (taw - np.asarray(raw_mm, float)))
 
 
 def deepen_roots(
@@ -287,7 +329,7 @@ def deepen_roots(
     (40.0, 40.0)
     """
     ds, before = np.asarray(ds_mm, float), np.asarray(root_depth_before_m, float)
-    grown = np.maximum(np.asarray(root_depth_m, float) - before, 0.0)
+    grown = np.maximum(np.asarray(root_depth_m, float) - before, ZERO)
     gained = ds * (grown / np.maximum(np.asarray(profile_m, float) - before, TINY))
     return np.asarray(dr_mm, float) + gained, ds - gained
 
@@ -338,5 +380,5 @@ def days_to_stress(depletion_mm: ArrayLike, raw_mm: ArrayLike, et_mean_mm: Array
     >>> days_to_stress([30.0, 70.0], 60.0, 6.0)
     array([5., 0.])
     """
-    left = np.maximum(np.asarray(raw_mm, float) - np.asarray(depletion_mm, float), 0.0)
+    left = np.maximum(np.asarray(raw_mm, float) - np.asarray(depletion_mm, float), ZERO)
     return left / np.maximum(np.asarray(et_mean_mm, float), 0.01)

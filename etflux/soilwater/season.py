@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import fields, replace
+from dataclasses import fields
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -21,7 +21,7 @@ if TYPE_CHECKING:
 
 STORES = ("de_mm", "dr_mm", "ds_mm", "snow_mm")
 DAILY = (*(field.name for field in fields(Fluxes)), *STORES)
-BLOCK_UNITS = 2048  # so that one day's arrays of a block stay in the processor's cache
+BLOCK_UNITS = 8192  # fewer: the cost of calls; more: one day's arrays of a block leave the processor's cache
 
 _IN = ("rain_stand_mm", "irrigation_mm", "capillary_rise_mm")
 _OUT = ("runoff_mm", "drainage_mm", "evaporation_mm", "transpiration_mm")
@@ -75,6 +75,7 @@ def start_state(soil: Soil, settings: Settings, root_depth_m: ArrayLike, water_s
     Parameters
     ----------
     soil : Soil
+        Parameters of the units.
     settings : Settings
         start_water_share, unless `water_share` is given.
     root_depth_m : array_like, shape (unit,)
@@ -120,12 +121,14 @@ def season(
     events: Events | None = None,
     keep: Sequence[str] = DAILY,
     block_units: int = BLOCK_UNITS,
+    out: dict[str, np.ndarray] | None = None,
 ) -> tuple[dict[str, np.ndarray], State]:
     """Run all days of a record, or a stretch of it: the state that comes back starts the next stretch.
 
     Parameters
     ----------
     soil : Soil
+        Parameters of the units.
     forcing : Forcing
         Arrays of shape (day, ..., unit); a scalar stands for all days and units.
     state : State
@@ -138,6 +141,8 @@ def season(
         Names of :data:`DAILY` to return.
     block_units : int
         Units run together; changes speed, not results.
+    out : dict of str to ndarray, optional
+        Arrays to fill, from an earlier call of the same shape; a long run saves the cost of fresh memory.
 
     Returns
     -------
@@ -159,7 +164,7 @@ def season(
             raise ValueError(f"{name} has the shape {shape}: must have {n_days} days first and {n_units} units last")
     shape = np.broadcast_shapes(state.dr_mm.shape, *(shape[1:] for shape in shapes.values()))
     state = State(**{name: np.broadcast_to(value, shape) for name, value in vars(state).items()})
-    daily = {name: np.empty((n_days, *shape)) for name in keep}
+    daily = {name: np.empty((n_days, *shape)) for name in keep} if out is None else {name: out[name] for name in keep}
     step = max(1, block_units // max(1, int(np.prod(shape[:-1]))))
     ends = [
         _block(cut(soil, part), given, cut(state, part), rule and cut(rule, part), events, daily, part)
@@ -180,19 +185,21 @@ def _block(
 ) -> State:
     """Run the days of one block of units and write them into `daily`."""
     arrays = {name: value[..., part] for name, value in given.items() if np.ndim(value)}
-    constant = Forcing(**{name: value if np.ndim(value) == 0 else value[0] for name, value in given.items()})
+    constant = {name: value for name, value in given.items() if np.ndim(value) == 0}
     dated = _dated(events, part)
+    parts = {name: values[..., part] for name, values in daily.items()}
     shape = state.dr_mm.shape
     for day in range(len(arrays["eto_mm"])):
-        today = replace(constant, **{name: values[day] for name, values in arrays.items()})
+        today = {**constant, **{name: values[day] for name, values in arrays.items()}}
         if day in dated:
             gross = np.zeros(shape)
             unit, depth = dated[day]
-            np.add.at(gross, (..., unit), depth)
-            today = replace(today, irrigation_gross_mm=today.irrigation_gross_mm + gross)
-        state, fluxes = day_step(state, soil, today, rule)
-        for name, values in daily.items():
-            values[day, ..., part] = getattr(state if name in STORES else fluxes, name)
+            np.add.at(gross.T, unit, depth.reshape(-1, *(1,) * (len(shape) - 1)))  # one stand may have two that day
+            today["irrigation_gross_mm"] = today["irrigation_gross_mm"] + gross
+        state, fluxes = day_step(state, soil, Forcing(**today), rule)
+        of_the_day = {**vars(state), **vars(fluxes)}
+        for name, values in parts.items():
+            values[day] = of_the_day[name]
     return State(**{name: np.broadcast_to(value, shape) for name, value in vars(state).items()})
 
 
@@ -216,7 +223,10 @@ def closure(daily: Mapping[str, np.ndarray], start: State, end: State) -> np.nda
     ----------
     daily : mapping
         What :func:`season` returned for the days from `start` to `end`.
-    start, end : State
+    start : State
+        Before the first day.
+    end : State
+        After the last day.
 
     Returns
     -------

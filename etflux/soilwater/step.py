@@ -12,7 +12,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass, replace
 from functools import cached_property
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 
@@ -79,6 +79,21 @@ class Soil:
     def cn_wet(self) -> np.ndarray:
         """Curve number for antecedent condition III."""
         return eq.curve_number_wet(self.curve_number)
+
+    @cached_property
+    def wetness_limits(self) -> tuple[np.ndarray, np.ndarray]:
+        """Depletions of the drying layer between which the curve number falls from III to I. [mm]"""
+        return eq.wetness_limits(self.rew_mm, self.tew_mm)
+
+    @cached_property
+    def drip_shade(self) -> np.ndarray:
+        """Shading of the ground that drip wets."""
+        return eq.DRIP_SHADE * np.asarray(self.is_drip, float)
+
+    @cached_property
+    def bare_share(self) -> np.ndarray:
+        """Part of the evaporation that residue lets through."""
+        return eq.bare_share(self.residue_share)
 
     @cached_property
     def layer_available_mm(self) -> np.ndarray:
@@ -213,6 +228,7 @@ def day_step(state: State, soil: Soil, forcing: Forcing, rule: Rule | None = Non
     state : State
         At the end of the day before.
     soil : Soil
+        Parameters of the units.
     forcing : Forcing
         Of the day. A NaN stops the unit: its fluxes and its depletions are NaN from this day on.
     rule : Rule, optional
@@ -234,65 +250,56 @@ def day_step(state: State, soil: Soil, forcing: Forcing, rule: Rule | None = Non
     dr, ds = _move_roots(state, soil, forcing.root_depth_m, taw)
 
     # 1. irrigation, decided on yesterday's p
-    net, gross, to_air, below = _irrigate(state, soil, forcing, rule, dr, taw)
+    water_in = _irrigate(state, soil, forcing, rule, dr, taw)
 
     # 2. snow and runoff, by the wetness of the drying layer
-    water, melt, snow = eq.snow_balance(forcing.rain_mm, forcing.t_mean_c, state.snow_mm, soil.melt_factor_mm)
-    run_off = eq.runoff(
-        water,
-        eq.curve_number_today(state.de_mm, soil.rew_mm, soil.tew_mm, soil.cn_dry, soil.curve_number, soil.cn_wet),
-    )
+    water, melt, snow = _snow(state, soil, forcing)
+    run_off = _runoff(water, state.de_mm, soil)
     rain_in = water - run_off
 
     # 3. the part of the surface that is wet, and exposed
-    fw = np.where(rain_in >= WETTING_RAIN_MM, 1.0, np.where(net > 0.0, soil.wetted_fraction, state.fw))
-    de, de_dry = state.de_mm, state.de_dry_mm
-    if np.any(fw != state.fw):
-        de, de_dry = eq.rewet_surface(de, de_dry, state.fw, fw)
-    few = eq.exposed_wetted_fraction(forcing.ground_cover, fw, soil.is_drip, soil.residue_share)
+    fw, de, de_dry = _wet_surface(state, soil, rain_in, water_in)
+    few = eq.exposed_wetted_fraction(forcing.ground_cover, fw, soil.drip_shade, soil.bare_share)
 
     # 4. depletion of the drying layer after the day's water; a sprinkle evaporates without wetting it
-    wetting = np.where(water < eq.SMALL_RAIN_SHARE * eto, 0.0, rain_in)
-    de = np.maximum(de - wetting - net / fw, 0.0)
-    de_dry = np.maximum(de_dry - wetting, 0.0)
+    wetting = rain_in * (water >= eq.SMALL_RAIN_SHARE * eto)
+    de_dry = np.maximum(de_dry - wetting, eq.ZERO)
+    de = np.maximum(de - (wetting + water_in.net / fw if water_in.any else wetting), eq.ZERO)
 
-    # 5. evaporation, eq. 71 and 74
-    ke = eq.evaporation_coefficient(
-        eq.evaporation_reduction(de, soil.tew_mm, soil.rew_mm), kcb, kc_max, few, soil.residue_share
-    )
-    evaporation = np.minimum(ke * eto, few * np.maximum(soil.tew_mm - de, 0.0))
+    # 5. evaporation, eq. 74 and 71
+    kr = eq.evaporation_reduction(de, soil.tew_mm, soil.rew_mm)
+    ke = eq.evaporation_coefficient(kr, kcb, kc_max, few, soil.bare_share)
+    evaporation = np.minimum(ke * eto, few * (soil.tew_mm - de))
 
     # 6. root zone after the day's water; what it cannot hold percolates
-    dr = dr - rain_in - net - forcing.capillary_rise_mm
-    percolation = np.maximum(-dr, 0.0) + below
-    dr = np.maximum(dr, 0.0)
+    dr = dr - rain_in - water_in.net - forcing.capillary_rise_mm
+    filled = np.maximum(dr, eq.ZERO)
+    percolation = water_in.below + (filled - dr)
+    dr = filled
 
     # 7. evaporation dries the top to half of wilting point, so it may draw more than TAW
-    drawable = np.maximum(taw + soil.below_wilting_mm - dr, 0.0)
-    evaporation = np.minimum(evaporation, drawable)
-    depletion = dr - few * np.maximum(de - soil.layer_available_mm, 0.0)
-    de = de + evaporation / few
+    drawable = np.maximum(taw + soil.below_wilting_mm - dr, eq.ZERO)
+    evaporation = np.maximum(np.minimum(evaporation, drawable), eq.ZERO)
 
-    # 8. stress and transpiration, eq. 84; water below wilting point in the drying layer does not count against plants
+    # 8. stress and transpiration, eq. 84
     et_potential = (kcb + ke) * eto
     p = eq.depletion_fraction(soil.p_table, et_potential)
     raw = p * taw
-    ks = np.where(kcb > 0.0, eq.stress_coefficient(depletion, taw, raw), 1.0)
+    ks = eq.stress_coefficient(_for_plants(dr, de, few, soil), taw, raw)
     transpiration = np.minimum(ks * kcb * eto, drawable - evaporation)
     et = evaporation + transpiration
 
-    # 9. depletions at the day's end
+    # 9. depletions at the day's end; what overfills the soil below the roots drains
+    de = de + evaporation / few
     dr = dr + et
     ds = ds - percolation
-    drainage = np.maximum(-ds, 0.0)
-    ds = np.maximum(ds, 0.0)
+    filled = np.maximum(ds, eq.ZERO)
+    drainage = filled - ds
+    ds = filled
 
-    depletion = dr - few * np.maximum(de - soil.layer_available_mm, 0.0)
-    until_stress = eq.days_to_stress(depletion, raw, (et + state.et_1_mm + state.et_2_mm) / 3.0)
-    room = 0.0 if rule is None else rule.rain_room_mm
     fluxes = {
         "ke": ke,
-        "ks": ks,
+        "ks": _without_plants(ks, kcb),
         "few": few,
         "evaporation_mm": evaporation,
         "transpiration_mm": transpiration,
@@ -302,23 +309,22 @@ def day_step(state: State, soil: Soil, forcing: Forcing, rule: Rule | None = Non
         "raw_mm": raw,
         "rain_stand_mm": forcing.rain_mm,
         "melt_mm": melt,
-        "irrigation_mm": net + below,
-        "irrigation_gross_mm": gross,
-        "sprinkler_loss_mm": to_air,
+        "irrigation_mm": water_in.ground,
+        "irrigation_gross_mm": water_in.gross,
+        "sprinkler_loss_mm": water_in.to_air,
         "capillary_rise_mm": forcing.capillary_rise_mm,
         "runoff_mm": run_off,
         "percolation_mm": percolation,
         "drainage_mm": drainage,
-        "need_mm": np.where(forcing.in_window, np.maximum(dr - room, 0.0), 0.0),
-        "days_to_stress": np.where(forcing.stress_window, until_stress, np.nan),
+        "need_mm": np.maximum(dr - (0.0 if rule is None else rule.rain_room_mm), eq.ZERO) * forcing.in_window,
+        "days_to_stress": _days_to_stress(state, soil, forcing, dr, de, few, raw, et),
     }
     stores = {"de_mm": de, "dr_mm": dr, "ds_mm": ds}
     if soil.has_open_water:
         _open_water(fluxes, stores, state, soil, forcing, water)
     lost = np.isnan(stores["dr_mm"])
-    if lost.any():
+    if _any(lost):
         fluxes = {name: np.where(lost, np.nan, values) for name, values in fluxes.items()}
-    closed = np.logical_and(state.in_window, np.logical_not(forcing.in_window))
     after = State(
         **stores,
         de_dry_mm=de_dry,
@@ -329,38 +335,123 @@ def day_step(state: State, soil: Soil, forcing: Forcing, rule: Rule | None = Non
         p=p,
         et_1_mm=et,
         et_2_mm=state.et_1_mm,
-        days_since_irrigation=np.where(gross > 0.0, 1.0, state.days_since_irrigation + 1.0),
-        season_gross_mm=np.where(closed, 0.0, state.season_gross_mm) + gross,
+        days_since_irrigation=water_in.days_since,
+        season_gross_mm=water_in.season_gross,
         in_window=forcing.in_window,
     )
     return after, Fluxes(**fluxes)
 
 
+def _any(condition: Any) -> bool:
+    return bool(np.logical_or.reduce(condition, axis=None))
+
+
+def _all(condition: Any) -> bool:
+    return bool(np.logical_and.reduce(condition, axis=None))
+
+
+class _WaterIn(NamedTuple):
+    """Irrigation of the day, and what the next day's decision needs."""
+
+    any: bool
+    net: np.ndarray
+    gross: np.ndarray
+    to_air: np.ndarray
+    below: np.ndarray
+    ground: np.ndarray
+    season_gross: np.ndarray
+    days_since: np.ndarray
+
+
+def _for_plants(dr: np.ndarray, de: np.ndarray, few: np.ndarray, soil: Soil) -> np.ndarray:
+    """Root zone depletion without what the drying layer lacks below wilting point, which plants never had."""
+    return dr - few * np.maximum(de - soil.layer_available_mm, eq.ZERO)
+
+
+def _without_plants(ks: np.ndarray, kcb: np.ndarray) -> np.ndarray:
+    """No plants, no stress."""
+    bare = kcb <= 0.0
+    return np.maximum(ks, bare) if _any(bare) else ks
+
+
 def _move_roots(state: State, soil: Soil, root_depth_m: np.ndarray, taw: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
     """Depletions of both stores after the day's change of root depth."""
     dr, ds = state.dr_mm, state.ds_mm
-    change = root_depth_m - state.root_depth_m
-    if np.any(change > 0.0):
+    if _any(root_depth_m > state.root_depth_m):
         dr, ds = eq.deepen_roots(dr, ds, state.root_depth_m, root_depth_m, soil.profile_depth_m)
-    if np.any(change < 0.0):
+    if _any(root_depth_m < state.root_depth_m):
         dr, ds = eq.shrink_roots(dr, ds, state.few * state.de_mm, state.root_depth_m, root_depth_m, taw)
     return dr, ds
 
 
 def _irrigate(
     state: State, soil: Soil, forcing: Forcing, rule: Rule | None, dr: np.ndarray, taw: np.ndarray
-) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:
-    """Net depth of the day, gross depth, loss to the air and loss below the roots."""
+) -> _WaterIn:
+    """Dated irrigation, or else what the rule brings."""
+    pumped = state.season_gross_mm
+    closed = state.in_window > np.asarray(forcing.in_window)
+    if _any(closed):
+        pumped = np.where(closed, 0.0, pumped)
     net = soil.efficiency * forcing.irrigation_gross_mm
     if rule is not None:
-        closed = np.logical_and(state.in_window, np.logical_not(forcing.in_window))
         by_rule = irrigation.rule_depth(
-            rule, dr, taw, state.p * taw, state.days_since_irrigation, np.where(closed, 0.0, state.season_gross_mm),
-            soil.efficiency, forcing.in_window, forcing.late,
+            rule, dr, taw, state.p * taw, state.days_since_irrigation, pumped, soil.efficiency, forcing.in_window,
+            forcing.late,
         )  # fmt: skip
-        net = np.where(net > 0.0, net, by_rule)
+        net = np.where(net > 0.0, net, by_rule) if _any(net > 0.0) else by_rule
+    none = np.logical_not(net > 0.0)
+    if _all(none):
+        return _WaterIn(False, net, net, net, net, net, pumped, state.days_since_irrigation + 1.0)
     gross, to_air, below = irrigation.gross_parts(net, soil.efficiency, soil.loss_to_air)
-    return net, gross, to_air, below
+    since = state.days_since_irrigation * none + 1.0
+    return _WaterIn(True, net, gross, to_air, below, net + below, pumped + gross, since)
+
+
+def _snow(state: State, soil: Soil, forcing: Forcing) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Water that reaches the ground, melt and snow; where no unit freezes or has snow there is nothing to do."""
+    if not _any(state.snow_mm > 0.0) and not _any(np.logical_not(forcing.t_mean_c >= 0.0)):
+        return forcing.rain_mm, state.snow_mm, state.snow_mm
+    return eq.snow_balance(forcing.rain_mm, forcing.t_mean_c, state.snow_mm, soil.melt_factor_mm)
+
+
+def _runoff(water: np.ndarray, de: np.ndarray, soil: Soil) -> np.ndarray:
+    """Runoff by the curve number of the day; where no unit has water there is none."""
+    dry = water == 0.0
+    if _all(dry):
+        return water
+    number = eq.curve_number_today(de, *soil.wetness_limits, soil.cn_dry, soil.curve_number, soil.cn_wet)
+    return eq.runoff(water, number)
+
+
+def _wet_surface(
+    state: State, soil: Soil, rain_in: np.ndarray, water_in: _WaterIn
+) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Wetted fraction after the day's rain and irrigation (p. 149 with its errata), De there and in the part left dry.
+
+    Rain of 3 mm wets all, with or without irrigation; irrigation with less rain wets the method's fraction.
+    """
+    fw = np.where(water_in.net > 0.0, soil.wetted_fraction, state.fw) if water_in.any else state.fw
+    fw = np.maximum(fw, rain_in >= WETTING_RAIN_MM)
+    if _all(fw == state.fw):
+        return fw, state.de_mm, state.de_dry_mm
+    return fw, *eq.rewet_surface(state.de_mm, state.de_dry_mm, state.fw, fw)
+
+
+def _days_to_stress(
+    state: State,
+    soil: Soil,
+    forcing: Forcing,
+    dr: np.ndarray,
+    de: np.ndarray,
+    few: np.ndarray,
+    raw: np.ndarray,
+    et: np.ndarray,
+) -> np.ndarray:
+    """Days to stress at the mean use of three days, blank outside its window."""
+    if not _any(forcing.stress_window):
+        return np.full_like(dr, np.nan)
+    days = eq.days_to_stress(_for_plants(dr, de, few, soil), raw, (et + state.et_1_mm + state.et_2_mm) / 3.0)
+    return np.where(forcing.stress_window, days, np.nan)
 
 
 def _open_water(
