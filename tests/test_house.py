@@ -16,8 +16,8 @@ PACKAGE = Path(etflux.__file__).parent
 
 # A module may import from rooms named before its own, never from later ones.
 ROOMS = [
-    "__init__", "variables", "findings", "humidity", "solar", "reference", "case", "outlines", "weather", "stands", "marks",
-    "crops", "irrigation", "soilwater", "counties", "profiles", "column", "wind", "airmass", "checks", "results",
+    "__init__", "variables", "findings", "humidity", "solar", "reference", "case", "outlines", "weather",
+    "irrigation", "soilwater", "stands", "marks", "crops", "canopy", "counties", "profiles", "column", "wind", "airmass", "checks", "results",
     "run", "workbook", "brief", "cli",
 ]  # fmt: skip
 
