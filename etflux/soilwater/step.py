@@ -319,19 +319,20 @@ def day_step(state: State, soil: Soil, forcing: Forcing, rule: Rule | None = Non
         "need_mm": np.maximum(dr - (0.0 if rule is None else rule.rain_room_mm), eq.ZERO) * forcing.in_window,
         "days_to_stress": _days_to_stress(state, soil, forcing, dr, de, few, raw, et),
     }
-    stores = {"de_mm": de, "dr_mm": dr, "ds_mm": ds}
+    stores = {"de_mm": de, "dr_mm": dr, "ds_mm": ds, "snow_mm": snow}
     if soil.has_open_water:
         _open_water(fluxes, stores, state, soil, forcing, water)
     lost = np.isnan(stores["dr_mm"])
     if _any(lost):
-        fluxes = {name: np.where(lost, np.nan, values) for name, values in fluxes.items()}
+        fluxes, stores = (
+            {name: np.where(lost, np.nan, values) for name, values in part.items()} for part in (fluxes, stores)
+        )
     after = State(
         **stores,
         de_dry_mm=de_dry,
         root_depth_m=forcing.root_depth_m,
         fw=fw,
         few=few,
-        snow_mm=snow,
         p=p,
         et_1_mm=et,
         et_2_mm=state.et_1_mm,

@@ -1,5 +1,6 @@
-"""USDA curve numbers: SCS National Engineering Handbook 4 (1985) and TR-55 (1986), as quoted in public tables; conditions
-I and III by Hawkins et al. (1985), formulas from memory, against the printed antecedent table.
+"""USDA curve numbers: SCS National Engineering Handbook 4 (1985) and TR-55 (1986), as quoted in public tables.
+
+Conditions I and III by Hawkins et al. (1985), formulas from memory, against the printed antecedent table.
 """
 
 import csv
