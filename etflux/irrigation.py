@@ -162,30 +162,6 @@ def gross_parts(
     return gross, to_air, loss - to_air
 
 
-def window(n_days: int, first_day: ArrayLike, last_day: ArrayLike) -> np.ndarray:
-    """Days from first to last, both included, as booleans.
-
-    Parameters
-    ----------
-    n_days : int
-        Days of the run.
-    first_day, last_day : array_like, shape (unit,)
-        Positions of days; NaN: a stage not reached (no first day: never; no last day: to the end).
-
-    Returns
-    -------
-    ndarray of bool, shape (n_days, unit)
-
-    Examples
-    --------
-    >>> window(4, [1, float("nan")], [2, 3]).astype(int)
-    array([[0, 0], [1, 0], [1, 0], [0, 0]])
-    """
-    first, last = np.asarray(first_day, float), np.asarray(last_day, float)
-    day = np.arange(n_days, dtype=float)[:, None]
-    return (day >= first) & (day <= np.where(np.isnan(last), np.inf, last))
-
-
 def rules_for_units(units: pd.DataFrame, rules: pd.DataFrame) -> Rule:
     """Rules of the units by their `rule_id`; a unit without one, or a rainfed one, gets a rule that brings nothing.
 

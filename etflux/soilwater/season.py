@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Mapping, Sequence
 from dataclasses import fields
 from typing import TYPE_CHECKING, Any
@@ -165,13 +166,18 @@ def season(
     shape = np.broadcast_shapes(state.dr_mm.shape, *(shape[1:] for shape in shapes.values()))
     state = State(**{name: np.broadcast_to(value, shape) for name, value in vars(state).items()})
     daily = {name: np.empty((n_days, *shape)) for name in keep} if out is None else {name: out[name] for name in keep}
-    step = max(1, block_units // max(1, int(np.prod(shape[:-1]))))
     ends = [
         _block(cut(soil, part), given, cut(state, part), rule and cut(rule, part), events, daily, part)
-        for part in (slice(first, min(first + step, n_units)) for first in range(0, n_units, step))
+        for part in _parts(n_units, block_units // max(1, int(np.prod(shape[:-1]))))
     ]
     names = [field.name for field in fields(State)]
     return daily, State(**{name: np.concatenate([getattr(end, name) for end in ends], axis=-1) for name in names})
+
+
+def _parts(n_units: int, block_units: int) -> list[slice]:
+    """Even parts of at most `block_units`."""
+    ends = np.linspace(0, n_units, -(-n_units // max(1, block_units)) + 1).astype(int)
+    return [slice(int(first), int(last)) for first, last in itertools.pairwise(ends)]
 
 
 def _block(

@@ -393,13 +393,14 @@ def _irrigate(
     closed = state.in_window > np.asarray(forcing.in_window)
     if _any(closed):
         pumped = np.where(closed, 0.0, pumped)
-    net = soil.efficiency * forcing.irrigation_gross_mm
+    dated = soil.efficiency * forcing.irrigation_gross_mm
+    net = dated
     if rule is not None:
-        by_rule = irrigation.rule_depth(
+        net = irrigation.rule_depth(
             rule, dr, taw, state.p * taw, state.days_since_irrigation, pumped, soil.efficiency, forcing.in_window,
             forcing.late,
         )  # fmt: skip
-        net = np.where(net > 0.0, net, by_rule) if _any(net > 0.0) else by_rule
+        net = np.where(dated > 0.0, dated, net) if _any(dated > 0.0) else net
     none = np.logical_not(net > 0.0)
     if _all(none):
         return _WaterIn(False, net, net, net, net, net, pumped, state.days_since_irrigation + 1.0)

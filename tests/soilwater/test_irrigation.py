@@ -6,7 +6,7 @@ import numpy as np
 import pandas as pd
 import pytest
 
-from etflux.irrigation import DEFAULTS, dated_events, rule_depth, rule_problems, rules_for_units, window
+from etflux.irrigation import DEFAULTS, dated_events, rule_depth, rule_problems, rules_for_units
 from etflux.soilwater import closure, season
 
 
@@ -122,13 +122,6 @@ def test_need_is_what_is_depleted_but_the_room(make):
     assert (daily["need_mm"][:10] == 0.0).all()
     assert daily["need_mm"][10:] == pytest.approx(np.maximum(daily["dr_mm"][10:] - 12.0, 0.0))
     assert daily["need_mm"][-1] > 0.0
-
-
-def test_window_counts_both_ends_and_stages_not_reached():
-    days = window(5, [1, np.nan, 2], [3, 4, np.nan])
-    assert days[:, 0].tolist() == [False, True, True, True, False]
-    assert not days[:, 1].any()
-    assert days[:, 2].tolist() == [False, False, True, True, True]
 
 
 UNITS = pd.DataFrame({
