@@ -19,8 +19,7 @@ import numpy as np
 from numpy.typing import ArrayLike
 
 # numpy is quicker with 0-d arrays than with Python numbers, and with these two steps than with its clip.
-ZERO, ONE, LEAST_P, MOST_P = (np.array(number) for number in (0.0, 1.0, 0.1, 0.8))
-TINY = 1e-9
+ZERO, ONE, LEAST_P, MOST_P, TINY = (np.array(number) for number in (0.0, 1.0, 0.1, 0.8, 1e-9))
 LEAST_FEW = 0.01  # few is at least this, FAO-56 eq. 75
 RESIDUE_EFFECT = 0.5  # 5 % less evaporation for every 10 % of the ground under residue, FAO-56 ch. 11
 DRIP_SHADE = 2.0 / 3.0  # emitters under the plants, FAO-56 p. 147
@@ -309,7 +308,8 @@ def stress_coefficient(depletion_mm: ArrayLike, taw_mm: ArrayLike, raw_mm: Array
     array([1.  , 0.97, 0.  , 0.  ])
     """
     taw = np.asarray(taw_mm, float)
-    return unit_interval((taw - np.asarray(depletion_mm, float)) / (taw - np.asarray(raw_mm, float)))
+    span = np.maximum(taw - np.asarray(raw_mm, float), TINY)
+    return unit_interval((taw - np.asarray(depletion_mm, float)) / span)
 
 
 def deepen_roots(

@@ -13,7 +13,8 @@ from numpy.typing import ArrayLike
 from etflux.findings import Finding
 from etflux.irrigation import Events, Rule
 from etflux.soilwater import equations as eq
-from etflux.soilwater.step import Fluxes, Forcing, Soil, State, cut, day_step
+from etflux.soilwater.records import Fluxes, Forcing, Soil, State, cut
+from etflux.soilwater.step import day_step
 
 if TYPE_CHECKING:
     import pandas as pd

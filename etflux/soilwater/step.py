@@ -1,17 +1,12 @@
 """One day of the soil water balance of all units at once: the dual crop coefficient method of FAO-56.
 
-The order of a day is that of :func:`day_step`: roots, irrigation, snow and runoff, the surface that is wet, its
-depletion, evaporation, root zone, limits, transpiration and stress, percolation. All water comes early in the day
-(FAO-56 Examples 35 and 38). Two stores keep water: the root zone (depletion Dr, which contains the drying layer's De)
-and the soil below it down to the profile depth (Ds), which returns what it holds when roots grow into it.
-
-Every array has the shape (unit,), or batch axes in front of it; a scalar stands for all units.
+The order of a day is that of :func:`day_step`. All water comes early in the day (FAO-56 Examples 35 and 38). Two
+stores keep water: the root zone (depletion Dr, which contains the drying layer's De) and the soil below it down to the
+profile depth (Ds), which takes what percolates and returns what it holds when roots grow into it.
 """
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
-from functools import cached_property
 from typing import Any, NamedTuple
 
 import numpy as np
@@ -19,205 +14,9 @@ import numpy as np
 from etflux import irrigation
 from etflux.irrigation import Rule
 from etflux.soilwater import equations as eq
+from etflux.soilwater.records import Fluxes, Forcing, Soil, State
 
 WETTING_RAIN_MM = 3.0  # rain that wets all of the surface, FAO-56 p. 149
-WP_SHARE_LEFT = 500.0  # mm per m of theta_wp: evaporation dries the layer to half of wilting point, FAO-56 eq. 73
-
-
-@dataclass(frozen=True)
-class Soil:
-    """What does not change from day to day, per unit.
-
-    Parameters
-    ----------
-    available_water_mm_m : ndarray
-        Water held between field capacity and wilting point. [mm m-1]
-    theta_wp : ndarray
-        Wilting point. [m3 m-3]
-    evaporation_depth_m, tew_mm, rew_mm : ndarray
-        The drying layer: depth Ze [m], total and readily evaporable water [mm].
-    profile_depth_m : ndarray
-        Depth of both stores together, at least the greatest root depth. [m]
-    curve_number : ndarray
-        For antecedent condition II.
-    residue_share : ndarray
-        Ground under crop residue, 0-1.
-    wetted_fraction, is_drip : ndarray
-        Ground wetted by the irrigation method, 0.01-1; whether emitters stand under the plants.
-    efficiency, loss_to_air : ndarray
-        Net over gross irrigation, above 0 to 1; whether the loss evaporates (sprinkler) or passes below the roots.
-    p_table : ndarray
-        Depletion fraction at ETc = 5 mm/d, 0.1-0.8.
-    open_water : ndarray of bool
-        Units that are water: Kcb ETo evaporates, brought by capillary_rise; rain runs off.
-    melt_factor_mm : float
-        Snow melt. [mm degC-1 d-1]
-    """
-
-    available_water_mm_m: np.ndarray
-    theta_wp: np.ndarray
-    evaporation_depth_m: np.ndarray
-    tew_mm: np.ndarray
-    rew_mm: np.ndarray
-    profile_depth_m: np.ndarray
-    curve_number: np.ndarray
-    residue_share: np.ndarray
-    wetted_fraction: np.ndarray
-    is_drip: np.ndarray
-    efficiency: np.ndarray
-    loss_to_air: np.ndarray
-    p_table: np.ndarray
-    open_water: np.ndarray
-    melt_factor_mm: float = 4.0
-
-    @cached_property
-    def cn_dry(self) -> np.ndarray:
-        """Curve number for antecedent condition I."""
-        return eq.curve_number_dry(self.curve_number)
-
-    @cached_property
-    def cn_wet(self) -> np.ndarray:
-        """Curve number for antecedent condition III."""
-        return eq.curve_number_wet(self.curve_number)
-
-    @cached_property
-    def wetness_limits(self) -> tuple[np.ndarray, np.ndarray]:
-        """Depletions of the drying layer between which the curve number falls from III to I. [mm]"""
-        return eq.wetness_limits(self.rew_mm, self.tew_mm)
-
-    @cached_property
-    def drip_shade(self) -> np.ndarray:
-        """Shading of the ground that drip wets."""
-        return eq.DRIP_SHADE * np.asarray(self.is_drip, float)
-
-    @cached_property
-    def bare_share(self) -> np.ndarray:
-        """Part of the evaporation that residue lets through."""
-        return eq.bare_share(self.residue_share)
-
-    @cached_property
-    def layer_available_mm(self) -> np.ndarray:
-        """Water of the drying layer that plants can take too: 1000 (theta_fc - theta_wp) Ze. [mm]"""
-        return self.available_water_mm_m * self.evaporation_depth_m
-
-    @cached_property
-    def below_wilting_mm(self) -> np.ndarray:
-        """Water of the drying layer below wilting point, for evaporation alone: 500 theta_wp Ze. [mm]"""
-        return WP_SHARE_LEFT * self.theta_wp * self.evaporation_depth_m
-
-    @cached_property
-    def has_open_water(self) -> bool:
-        """Whether any unit is open water."""
-        return bool(np.any(self.open_water))
-
-
-@dataclass(frozen=True)
-class State:
-    """What a unit carries into the next day: enough to go on from, so a checkpoint is a State.
-
-    Parameters
-    ----------
-    de_mm, de_dry_mm : ndarray
-        Depletion of the drying layer, in the wetted part and in the part left dry. [mm per area of the part]
-    dr_mm, ds_mm : ndarray
-        Depletion of the root zone, and of the soil below it. [mm]
-    root_depth_m : ndarray
-        Root depth of the day. [m]
-    fw, few : ndarray
-        Fraction wetted by the last rain or irrigation; exposed and wetted fraction of the day.
-    snow_mm : ndarray
-        Precipitation held as snow. [mm]
-    p : ndarray
-        Depletion fraction of the day, which the next day's irrigation rule uses.
-    et_1_mm, et_2_mm : ndarray
-        Water use of the day and of the day before; NaN at the start. [mm]
-    days_since_irrigation : ndarray
-        1 the day after an irrigation. [d]
-    season_gross_mm : ndarray
-        Pumped since the last irrigation window closed. [mm]
-    in_window : ndarray of bool
-        Whether the day was in the irrigation window.
-    """
-
-    de_mm: np.ndarray
-    de_dry_mm: np.ndarray
-    dr_mm: np.ndarray
-    ds_mm: np.ndarray
-    root_depth_m: np.ndarray
-    fw: np.ndarray
-    few: np.ndarray
-    snow_mm: np.ndarray
-    p: np.ndarray
-    et_1_mm: np.ndarray
-    et_2_mm: np.ndarray
-    days_since_irrigation: np.ndarray
-    season_gross_mm: np.ndarray
-    in_window: np.ndarray
-
-
-@dataclass(frozen=True)
-class Forcing:
-    """What comes from outside on one day, shape (unit,); for a season, shape (day, unit).
-
-    Parameters
-    ----------
-    eto_mm, rain_mm, t_mean_c : ndarray
-        Reference ET, precipitation [mm d-1], mean temperature [degC].
-    kcb, kc_max, ground_cover, root_depth_m : ndarray
-        Of the canopy: eq. 66-70, eq. 72, eq. 76 or the sod's own fc, and Zr [m].
-    irrigation_gross_mm : ndarray
-        Dated irrigation. [mm]
-    capillary_rise_mm : ndarray
-        Rise into the root zone. [mm d-1]
-    in_window, late : ndarray of bool
-        Whether the irrigation window is open; whether the rule's late depletion holds.
-    stress_window : ndarray of bool
-        Whether days to stress are worth saying (from V6 to R6).
-    """
-
-    eto_mm: np.ndarray
-    rain_mm: np.ndarray
-    t_mean_c: np.ndarray
-    kcb: np.ndarray
-    kc_max: np.ndarray
-    ground_cover: np.ndarray
-    root_depth_m: np.ndarray
-    irrigation_gross_mm: Any = 0.0
-    capillary_rise_mm: Any = 0.0
-    in_window: Any = False
-    late: Any = False
-    stress_window: Any = True
-
-
-@dataclass(frozen=True)
-class Fluxes:
-    """What a day brought, by the names of the results; stores (de_mm, dr_mm, ds_mm, snow_mm) are the State's.
-
-    `irrigation_mm` is what reaches the ground: the net depth, and of a surface method or drip also the loss, which is
-    part of `percolation_mm`. `irrigation_gross_mm` = `irrigation_mm` + `sprinkler_loss_mm`. `percolation_mm` leaves
-    the root zone, `drainage_mm` the profile. `et_potential_mm` is (Kcb + Ke) ETo.
-    """
-
-    ke: np.ndarray
-    ks: np.ndarray
-    few: np.ndarray
-    evaporation_mm: np.ndarray
-    transpiration_mm: np.ndarray
-    et_mm: np.ndarray
-    et_potential_mm: np.ndarray
-    taw_mm: np.ndarray
-    raw_mm: np.ndarray
-    rain_stand_mm: np.ndarray
-    melt_mm: np.ndarray
-    irrigation_mm: np.ndarray
-    irrigation_gross_mm: np.ndarray
-    sprinkler_loss_mm: np.ndarray
-    capillary_rise_mm: np.ndarray
-    runoff_mm: np.ndarray
-    percolation_mm: np.ndarray
-    drainage_mm: np.ndarray
-    need_mm: np.ndarray
-    days_to_stress: np.ndarray
 
 
 def day_step(state: State, soil: Soil, forcing: Forcing, rule: Rule | None = None) -> tuple[State, Fluxes]:
@@ -243,112 +42,38 @@ def day_step(state: State, soil: Soil, forcing: Forcing, rule: Rule | None = Non
     ----------
     .. [1] Allen et al. (1998), FAO Irrigation and Drainage Paper 56, ch. 7 and 8.
     """
-    eto, kcb, kc_max = forcing.eto_mm, forcing.kcb, forcing.kc_max
-
-    # 0. roots; what they reach brings the depletion it has
+    # roots; what they reach brings the depletion it has
     taw = soil.available_water_mm_m * forcing.root_depth_m  # eq. 82
     dr, ds = _move_roots(state, soil, forcing.root_depth_m, taw)
 
-    # 1. irrigation, decided on yesterday's p
+    # irrigation, decided on yesterday's p; snow and runoff; the surface that is wet
     water_in = _irrigate(state, soil, forcing, rule, dr, taw)
+    top = _wet_top(state, soil, forcing, water_in)
 
-    # 2. snow and runoff, by the wetness of the drying layer
-    water, melt, snow = _snow(state, soil, forcing)
-    run_off = _runoff(water, state.de_mm, soil)
-    rain_in = water - run_off
+    # root zone after the day's water, eq. 85; what it cannot hold percolates, eq. 88 before ET as in Example 38
+    dr, over = _fill(dr - top.rain_in - water_in.net - forcing.capillary_rise_mm)
+    percolation = over + water_in.below
 
-    # 3. the part of the surface that is wet, and exposed
-    fw, de, de_dry = _wet_surface(state, soil, rain_in, water_in)
-    few = eq.exposed_wetted_fraction(forcing.ground_cover, fw, soil.drip_shade, soil.bare_share)
+    # evaporation, stress, transpiration
+    used = _evapotranspire(soil, forcing, top, dr, taw)
 
-    # 4. depletion of the drying layer after the day's water; a sprinkle evaporates without wetting it
-    wetting = rain_in * (water >= eq.SMALL_RAIN_SHARE * eto)
-    de_dry = np.maximum(de_dry - wetting, eq.ZERO)
-    de = np.maximum(de - (wetting + water_in.net / fw if water_in.any else wetting), eq.ZERO)
+    # depletions at the day's end; what overfills the soil below the roots drains
+    de = top.de + used.evaporation / top.few  # eq. 77
+    dr = dr + used.et
+    ds, drainage = _fill(ds - percolation)
 
-    # 5. evaporation, eq. 74 and 71
-    kr = eq.evaporation_reduction(de, soil.tew_mm, soil.rew_mm)
-    ke = eq.evaporation_coefficient(kr, kcb, kc_max, few, soil.bare_share)
-    evaporation = np.minimum(ke * eto, few * (soil.tew_mm - de))
-
-    # 6. root zone after the day's water; what it cannot hold percolates
-    dr = dr - rain_in - water_in.net - forcing.capillary_rise_mm
-    filled = np.maximum(dr, eq.ZERO)
-    percolation = water_in.below + (filled - dr)
-    dr = filled
-
-    # 7. evaporation dries the top to half of wilting point, so it may draw more than TAW
-    drawable = np.maximum(taw + soil.below_wilting_mm - dr, eq.ZERO)
-    evaporation = np.maximum(np.minimum(evaporation, drawable), eq.ZERO)
-
-    # 8. stress and transpiration, eq. 84
-    et_potential = (kcb + ke) * eto
-    p = eq.depletion_fraction(soil.p_table, et_potential)
-    raw = p * taw
-    ks = eq.stress_coefficient(_for_plants(dr, de, few, soil), taw, raw)
-    transpiration = np.minimum(ks * kcb * eto, drawable - evaporation)
-    et = evaporation + transpiration
-
-    # 9. depletions at the day's end; what overfills the soil below the roots drains
-    de = de + evaporation / few
-    dr = dr + et
-    ds = ds - percolation
-    filled = np.maximum(ds, eq.ZERO)
-    drainage = filled - ds
-    ds = filled
-
-    fluxes = {
-        "ke": ke,
-        "ks": _without_plants(ks, kcb),
-        "few": few,
-        "evaporation_mm": evaporation,
-        "transpiration_mm": transpiration,
-        "et_mm": et,
-        "et_potential_mm": et_potential,
+    stores = {"de_mm": de, "dr_mm": dr, "ds_mm": ds, "snow_mm": top.snow}
+    fluxes = _fluxes(forcing, water_in, top, used) | {
         "taw_mm": taw,
-        "raw_mm": raw,
-        "rain_stand_mm": forcing.rain_mm,
-        "melt_mm": melt,
-        "irrigation_mm": water_in.ground,
-        "irrigation_gross_mm": water_in.gross,
-        "sprinkler_loss_mm": water_in.to_air,
-        "capillary_rise_mm": forcing.capillary_rise_mm,
-        "runoff_mm": run_off,
         "percolation_mm": percolation,
         "drainage_mm": drainage,
         "need_mm": np.maximum(dr - (0.0 if rule is None else rule.rain_room_mm), eq.ZERO) * forcing.in_window,
-        "days_to_stress": _days_to_stress(state, soil, forcing, dr, de, few, raw, et),
+        "days_to_stress": _days_to_stress(state, soil, forcing, top.few, used, dr, de),
     }
-    stores = {"de_mm": de, "dr_mm": dr, "ds_mm": ds, "snow_mm": snow}
     if soil.has_open_water:
-        _open_water(fluxes, stores, state, soil, forcing, water)
-    lost = np.isnan(stores["dr_mm"])
-    if _any(lost):
-        fluxes, stores = (
-            {name: np.where(lost, np.nan, values) for name, values in part.items()} for part in (fluxes, stores)
-        )
-    after = State(
-        **stores,
-        de_dry_mm=de_dry,
-        root_depth_m=forcing.root_depth_m,
-        fw=fw,
-        few=few,
-        p=p,
-        et_1_mm=et,
-        et_2_mm=state.et_1_mm,
-        days_since_irrigation=water_in.days_since,
-        season_gross_mm=water_in.season_gross,
-        in_window=forcing.in_window,
-    )
-    return after, Fluxes(**fluxes)
-
-
-def _any(condition: Any) -> bool:
-    return bool(np.logical_or.reduce(condition, axis=None))
-
-
-def _all(condition: Any) -> bool:
-    return bool(np.logical_and.reduce(condition, axis=None))
+        _open_water(fluxes, stores, state, soil, forcing, top.water)
+    fluxes, stores = _stopped(fluxes, stores)
+    return _after(state, forcing, water_in, top, used, stores), Fluxes(**fluxes)
 
 
 class _WaterIn(NamedTuple):
@@ -364,15 +89,45 @@ class _WaterIn(NamedTuple):
     days_since: np.ndarray
 
 
-def _for_plants(dr: np.ndarray, de: np.ndarray, few: np.ndarray, soil: Soil) -> np.ndarray:
-    """Root zone depletion without what the drying layer lacks below wilting point, which plants never had."""
-    return dr - few * np.maximum(de - soil.layer_available_mm, eq.ZERO)
+class _Top(NamedTuple):
+    """Rain and melt of the day, and the surface after them: wetted fractions, depletions of its wet and dry part."""
+
+    water: np.ndarray
+    melt: np.ndarray
+    snow: np.ndarray
+    run_off: np.ndarray
+    rain_in: np.ndarray
+    fw: np.ndarray
+    few: np.ndarray
+    de: np.ndarray
+    de_dry: np.ndarray
 
 
-def _without_plants(ks: np.ndarray, kcb: np.ndarray) -> np.ndarray:
-    """No plants, no stress."""
-    bare = kcb <= 0.0
-    return np.maximum(ks, bare) if _any(bare) else ks
+class _Used(NamedTuple):
+    """Water use of the day and its coefficients."""
+
+    ke: np.ndarray
+    ks: np.ndarray
+    p: np.ndarray
+    raw: np.ndarray
+    evaporation: np.ndarray
+    transpiration: np.ndarray
+    et: np.ndarray
+    et_potential: np.ndarray
+
+
+def _any(condition: Any) -> bool:
+    return bool(np.logical_or.reduce(condition, axis=None))
+
+
+def _all(condition: Any) -> bool:
+    return bool(np.logical_and.reduce(condition, axis=None))
+
+
+def _fill(depletion: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Depletion not below 0, and the water that a full store passes on."""
+    kept = np.maximum(depletion, eq.ZERO)
+    return kept, kept - depletion
 
 
 def _move_roots(state: State, soil: Soil, root_depth_m: np.ndarray, taw: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
@@ -409,6 +164,22 @@ def _irrigate(
     return _WaterIn(True, net, gross, to_air, below, net + below, pumped + gross, since)
 
 
+def _wet_top(state: State, soil: Soil, forcing: Forcing, water_in: _WaterIn) -> _Top:
+    """Snow, runoff, and the drying layer after the day's water."""
+    water, melt, snow = _snow(state, soil, forcing)
+    run_off = _runoff(water, state.de_mm, soil)
+    rain_in = water - run_off
+
+    fw, de, de_dry = _wet_surface(state, soil, rain_in, water_in)
+    few = eq.exposed_wetted_fraction(forcing.ground_cover, fw, soil.drip_shade, soil.bare_share)
+
+    # a sprinkle evaporates without wetting the layer, p. 153; the root zone gets it
+    wetting = rain_in * (water >= eq.SMALL_RAIN_SHARE * forcing.eto_mm)
+    de_dry = np.maximum(de_dry - wetting, eq.ZERO)
+    de = np.maximum(de - (wetting + water_in.net / fw if water_in.any else wetting), eq.ZERO)
+    return _Top(water, melt, snow, run_off, rain_in, fw, few, de, de_dry)
+
+
 def _snow(state: State, soil: Soil, forcing: Forcing) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     """Water that reaches the ground, melt and snow; where no unit freezes or has snow there is nothing to do."""
     if not _any(state.snow_mm > 0.0) and not _any(np.logical_not(forcing.t_mean_c >= 0.0)):
@@ -439,21 +210,66 @@ def _wet_surface(
     return fw, *eq.rewet_surface(state.de_mm, state.de_dry_mm, state.fw, fw)
 
 
+def _evapotranspire(soil: Soil, forcing: Forcing, top: _Top, dr: np.ndarray, taw: np.ndarray) -> _Used:
+    """Evaporation within its energy, its layer and the root zone; stress; transpiration within what is left."""
+    eto, kcb = forcing.eto_mm, forcing.kcb
+    kr = eq.evaporation_reduction(top.de, soil.tew_mm, soil.rew_mm)
+    ke = eq.evaporation_coefficient(kr, kcb, forcing.kc_max, top.few, soil.bare_share)
+    evaporation = np.minimum(ke * eto, top.few * (soil.tew_mm - top.de))
+
+    # evaporation dries the top to half of wilting point, so it may draw more than TAW
+    drawable = np.maximum(taw + soil.below_wilting_mm - dr, eq.ZERO)
+    evaporation = np.maximum(np.minimum(evaporation, drawable), eq.ZERO)
+
+    et_potential = (kcb + ke) * eto
+    p = eq.depletion_fraction(soil.p_table, et_potential)
+    raw = p * taw
+    ks = eq.stress_coefficient(_for_plants(dr, top.de, top.few, soil), taw, raw)
+    transpiration = np.minimum(ks * kcb * eto, drawable - evaporation)
+    return _Used(ke, ks, p, raw, evaporation, transpiration, evaporation + transpiration, et_potential)
+
+
+def _for_plants(dr: np.ndarray, de: np.ndarray, few: np.ndarray, soil: Soil) -> np.ndarray:
+    """Root zone depletion without what the drying layer lacks below wilting point, which plants never had."""
+    return dr - few * np.maximum(de - soil.layer_available_mm, eq.ZERO)
+
+
+def _without_plants(ks: np.ndarray, kcb: np.ndarray) -> np.ndarray:
+    """No plants, no stress."""
+    bare = kcb <= 0.0
+    return np.maximum(ks, bare) if _any(bare) else ks
+
+
 def _days_to_stress(
-    state: State,
-    soil: Soil,
-    forcing: Forcing,
-    dr: np.ndarray,
-    de: np.ndarray,
-    few: np.ndarray,
-    raw: np.ndarray,
-    et: np.ndarray,
+    state: State, soil: Soil, forcing: Forcing, few: np.ndarray, used: _Used, dr: np.ndarray, de: np.ndarray
 ) -> np.ndarray:
     """Days to stress at the mean use of three days, blank outside its window."""
     if not _any(forcing.stress_window):
         return np.full_like(dr, np.nan)
-    days = eq.days_to_stress(_for_plants(dr, de, few, soil), raw, (et + state.et_1_mm + state.et_2_mm) / 3.0)
+    mean = (used.et + state.et_1_mm + state.et_2_mm) / 3.0
+    days = eq.days_to_stress(_for_plants(dr, de, few, soil), used.raw, mean)
     return np.where(forcing.stress_window, days, np.nan)
+
+
+def _fluxes(forcing: Forcing, water_in: _WaterIn, top: _Top, used: _Used) -> dict[str, Any]:
+    """Fluxes that need no depletion of the day's end."""
+    return {
+        "ke": used.ke,
+        "ks": _without_plants(used.ks, forcing.kcb),
+        "few": top.few,
+        "evaporation_mm": used.evaporation,
+        "transpiration_mm": used.transpiration,
+        "et_mm": used.et,
+        "et_potential_mm": used.et_potential,
+        "raw_mm": used.raw,
+        "rain_stand_mm": forcing.rain_mm,
+        "melt_mm": top.melt,
+        "irrigation_mm": water_in.ground,
+        "irrigation_gross_mm": water_in.gross,
+        "sprinkler_loss_mm": water_in.to_air,
+        "capillary_rise_mm": forcing.capillary_rise_mm,
+        "runoff_mm": top.run_off,
+    }
 
 
 def _open_water(
@@ -476,9 +292,27 @@ def _open_water(
         stores[name] = np.where(soil.open_water, value + stop, stores[name])
 
 
-def cut(record: Any, part: Any) -> Any:
-    """The same record with every array cut along its last axis; scalars stay."""
-    return replace(
-        record, **{name: value[..., part] for name, value in vars(record).items() if name in record.__dataclass_fields__
-                   and np.ndim(value)}
-    )  # fmt: skip
+def _stopped(fluxes: dict[str, Any], stores: dict[str, Any]) -> tuple[dict[str, Any], dict[str, Any]]:
+    """Fluxes and stores with all of a unit blank whose root zone is not known."""
+    lost = np.isnan(stores["dr_mm"])
+    if not _any(lost):
+        return fluxes, stores
+    blank = [{name: np.where(lost, np.nan, value) for name, value in part.items()} for part in (fluxes, stores)]
+    return blank[0], blank[1]
+
+
+def _after(state: State, forcing: Forcing, water_in: _WaterIn, top: _Top, used: _Used, stores: dict[str, Any]) -> State:
+    """State at the day's end."""
+    return State(
+        **stores,
+        de_dry_mm=top.de_dry,
+        root_depth_m=forcing.root_depth_m,
+        fw=top.fw,
+        few=top.few,
+        p=used.p,
+        et_1_mm=used.et,
+        et_2_mm=state.et_1_mm,
+        days_since_irrigation=water_in.days_since,
+        season_gross_mm=water_in.season_gross,
+        in_window=forcing.in_window,
+    )

@@ -15,8 +15,8 @@ import numpy as np
 
 from etflux.irrigation import Events, Rule
 from etflux.soilwater import Forcing, Soil, closure, season, start_state
+from etflux.soilwater.records import cut
 from etflux.soilwater.season import BLOCK_UNITS
-from etflux.soilwater.step import cut
 
 N_UNITS, N_COUNTIES, N_DAYS = 25_000, 1_000, 20
 

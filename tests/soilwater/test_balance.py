@@ -8,8 +8,8 @@ from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
 from etflux.soilwater import DAILY, closure, daily_closure, day_step, season
+from etflux.soilwater.records import cut
 from etflux.soilwater.season import STORES
-from etflux.soilwater.step import cut
 
 MANY = settings(max_examples=8, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
 ROUNDING = 1e-9

@@ -200,7 +200,8 @@ def test_ground_left_dry_keeps_the_depletion_it_had(make):
 
 def test_open_water(make):
     soil = make.soil(2, open_water=np.array([True, False]), theta_wp=np.array([np.nan, 0.14]))
-    forcing = make.forcing(30, 2, kcb=1.05, root_depth_m=1.0, **ordinary_weather(30))
+    roots = np.tile([0.0, 1.0], (30, 1))
+    forcing = make.forcing(30, 2, kcb=1.05, root_depth_m=roots, **ordinary_weather(30))
     start = make.start(soil, forcing, share=0.5)
     daily, end = season(soil, forcing, start)
     assert daily["evaporation_mm"][:, 0] == pytest.approx(1.05 * forcing.eto_mm[:, 0])
