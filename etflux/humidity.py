@@ -305,9 +305,9 @@ def virtual_temperature(t_c: ArrayLike, q_kg_kg: ArrayLike) -> np.ndarray:
 
 
 def condensation_temperature(t_c: ArrayLike, dew_point_c: ArrayLike) -> np.ndarray:
-    """Temperature at the lifting condensation level. [degC]  [Bolton1980] eq. 15."""
-    td = _array(dew_point_c) + FREEZING_K
+    """Temperature at the lifting condensation level; saturated air is there already. [degC]  [Bolton1980] eq. 15."""
     t = _array(t_c) + FREEZING_K
+    td = np.minimum(_array(dew_point_c) + FREEZING_K, t)
     return 1.0 / (1.0 / (td - 56.0) + np.log(t / td) / 800.0) + 56.0 - FREEZING_K
 
 

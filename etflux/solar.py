@@ -11,6 +11,8 @@ References
 
 from __future__ import annotations
 
+from typing import Literal
+
 import numpy as np
 from numpy.typing import ArrayLike
 
@@ -140,13 +142,24 @@ def clock_from_solar(
     return _array(solar_hour) - solar_from_clock(0.0, day, longitude_deg, utc_offset_h)
 
 
+def sun_elevation(latitude_deg: ArrayLike, day: ArrayLike, solar_hour: ArrayLike) -> np.ndarray:
+    """Height of the sun above the horizon, negative at night. [rad]  [FAO56] Annex 3 eq. 3-15."""
+    phi, delta = np.radians(_array(latitude_deg)), declination(day)
+    omega = np.pi / 12.0 * (_array(solar_hour) - 12.0)
+    sine = np.sin(phi) * np.sin(delta) + np.cos(phi) * np.cos(delta) * np.cos(omega)
+    return np.arcsin(np.clip(sine, -1.0, 1.0))
+
+
 def _between(latitude_deg: ArrayLike, day: ArrayLike, first: np.ndarray, last: np.ndarray) -> np.ndarray:
     """Integral of the sine of the sun's elevation over an interval of hour angle, the sun being up."""
     phi, delta = np.radians(_array(latitude_deg)), declination(day)
     omega = sunset_hour_angle(latitude_deg, day)
-    a, b = np.clip(first, -omega, omega), np.clip(last, -omega, omega)
-    geometry = (b - a) * np.sin(phi) * np.sin(delta) + np.cos(phi) * np.cos(delta) * (np.sin(b) - np.sin(a))
-    return np.maximum(geometry, 0.0)
+    geometry = np.asarray(0.0)
+    for turn in (-2.0 * np.pi, 0.0, 2.0 * np.pi):  # solar time may run past midnight
+        a, b = np.clip(first + turn, -omega, omega), np.clip(last + turn, -omega, omega)
+        part = (b - a) * np.sin(phi) * np.sin(delta) + np.cos(phi) * np.cos(delta) * (np.sin(b) - np.sin(a))
+        geometry = geometry + np.maximum(part, 0.0)
+    return geometry
 
 
 def extraterrestrial_radiation_hourly(
@@ -216,23 +229,63 @@ def clear_sky_radiation(ra_mj_m2_d: ArrayLike, elevation_m: ArrayLike) -> np.nda
     return (0.75 + 2.0e-5 * _array(elevation_m)) * _array(ra_mj_m2_d)
 
 
+def mean_sun_elevation(latitude_deg: ArrayLike, day: ArrayLike) -> np.ndarray:
+    """Mean height of the sun of a day, weighted by radiation, not below 0. [rad]  [FAO56] Annex 3 eq. 3-16."""
+    phi = np.radians(_array(latitude_deg))
+    swing = np.sin(2.0 * np.pi / 365.0 * _array(day) - 1.39)
+    return np.maximum(0.85 + 0.3 * phi * swing - 0.42 * phi**2, 0.0)
+
+
+def clear_sky_index(
+    elevation_rad: ArrayLike,
+    pressure_kpa: ArrayLike,
+    vapour_pressure_kpa: ArrayLike,
+    turbidity: ArrayLike = 1.0,
+    form: Literal["ewri", "fao56"] = "ewri",
+) -> np.ndarray:
+    """Share of the radiation above the air that reaches the ground of a clear day or hour, direct and diffuse.
+
+    Parameters
+    ----------
+    elevation_rad : array_like
+        Height of the sun: :func:`mean_sun_elevation` for a day, :func:`sun_elevation` for an hour; taken as at
+        least 0.05. [rad]
+    pressure_kpa, vapour_pressure_kpa : array_like
+        Air and vapour pressure at the station. [kPa]
+    turbidity : array_like
+        1.0 clean air, 0.5 or less extremely turbid.
+    form : {"ewri", "fao56"}
+        Coefficients of 2005 or the earlier ones of 1998.
+
+    Returns
+    -------
+    ndarray
+        0 to 1.
+
+    References
+    ----------
+    .. [1] [EWRI2005] eqs. D.1 to D.4 (coefficients as quoted elsewhere, the report itself not seen).
+    .. [2] [FAO56] Annex 3 eqs. 3-17 to 3-20.
+    """
+    sine = np.sin(np.maximum(_array(elevation_rad), 0.05))
+    p = _array(pressure_kpa)
+    path = (0.14 * _array(vapour_pressure_kpa) * p + 2.1) / sine
+    water, slope = (0.075 * path**0.4, 0.36) if form == "ewri" else (0.091 * path**0.25, 0.33)
+    direct = 0.98 * np.exp(-0.00146 * p / (_array(turbidity) * sine) - water)
+    return direct + np.where(direct >= 0.15, 0.35 - slope * direct, 0.18 + 0.82 * direct)
+
+
 def clear_sky_radiation_humid(
     latitude_deg: ArrayLike,
     day: ArrayLike,
     pressure_kpa: ArrayLike,
     vapour_pressure_kpa: ArrayLike,
     turbidity: ArrayLike = 1.0,
+    form: Literal["ewri", "fao56"] = "ewri",
 ) -> np.ndarray:
-    """Clear-sky solar radiation with water vapour and turbidity.
+    """Clear-sky solar radiation of a day with water vapour and turbidity.
 
-    Parameters
-    ----------
-    latitude_deg, day : array_like
-        Latitude [deg] and day of the year.
-    pressure_kpa, vapour_pressure_kpa : array_like
-        Air and vapour pressure at the station. [kPa]
-    turbidity : array_like
-        1.0 clean air, 0.5 or less extremely turbid.
+    Parameters are those of :func:`clear_sky_index`, with latitude [deg] and day of the year.
 
     Returns
     -------
@@ -241,17 +294,11 @@ def clear_sky_radiation_humid(
 
     References
     ----------
-    .. [1] [EWRI2005] appendix D (eqs. D.1 to D.6); [FAO56] Annex 3 eqs. 3-14 to 3-20 has the earlier form.
+    .. [1] [EWRI2005] appendix D; [FAO56] Annex 3 eqs. 3-16 to 3-20.
     """
-    day_number, phi = _array(day), np.radians(_array(latitude_deg))
-    # mean elevation of the sun, weighted by radiation
-    angle = 0.85 + 0.3 * phi * np.sin(2.0 * np.pi / 365.0 * day_number - 1.39) - 0.42 * phi**2
-    sin_elevation = np.maximum(np.sin(np.maximum(angle, 0.0)), 0.05)
-    p = _array(pressure_kpa)
-    water_mm = 0.14 * _array(vapour_pressure_kpa) * p + 2.1
-    beam = 0.98 * np.exp(-0.00146 * p / (_array(turbidity) * sin_elevation) - 0.075 * (water_mm / sin_elevation) ** 0.4)
-    diffuse = np.where(beam >= 0.15, 0.35 - 0.36 * beam, 0.18 + 0.82 * beam)
-    return (beam + diffuse) * extraterrestrial_radiation(latitude_deg, day)
+    elevation = mean_sun_elevation(latitude_deg, day)
+    index = clear_sky_index(elevation, pressure_kpa, vapour_pressure_kpa, turbidity, form)
+    return index * extraterrestrial_radiation(latitude_deg, day)
 
 
 def radiation_from_sunshine(
