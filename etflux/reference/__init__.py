@@ -10,7 +10,7 @@ Shapes broadcast; daily arrays are (day, station). NaN where an input is NaN.
 
 from etflux.reference.daily import SURFACES, Surface, et_asce, eto_fao56, eto_hargreaves, penman_monteith
 from etflux.reference.hourly import et_from_hours, et_hourly, held_ratio
-from etflux.reference.opinions import second_opinions, spread
+from etflux.reference.opinions import second_opinions
 from etflux.reference.radiation import (
     ALBEDO,
     LEAST_WIND_M_S,
@@ -44,6 +44,5 @@ __all__ = [
     "second_opinions",
     "soil_heat_flux_month",
     "soil_heat_flux_month_so_far",
-    "spread",
     "wind_at_2m",
 ]

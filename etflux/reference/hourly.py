@@ -114,7 +114,8 @@ def et_from_hours(
        middle is 0.52 to 0.79 rad before sunset.
     .. [2] [EWRI2005] eqs. 1, 44 and 45, table 1: with the sun lower than 0.3 rad the last ratio serves (from memory).
     """
-    omega = np.pi / 12.0 * (_array(solar_hour) - 12.0)
+    t_c, rs_mj_m2_h, solar_hour, day = np.broadcast_arrays(*map(_array, (t_c, rs_mj_m2_h, solar_hour, day)))
+    omega = np.pi / 12.0 * (solar_hour - 12.0)
     sunset = solar.sunset_hour_angle(latitude_deg, day)
     ra = solar.extraterrestrial_radiation_hourly(latitude_deg, day, solar_hour)
     ratio = share_of_clear_sky(rs_mj_m2_h, solar.clear_sky_radiation(ra, elevation_m))
@@ -153,6 +154,8 @@ def held_ratio(rs_over_rso: ArrayLike, remember: ArrayLike, use: ArrayLike, firs
     array([0.6, 0.7, 0.1, 0.7])
     """
     ratio, keep, take = np.broadcast_arrays(_array(rs_over_rso), np.asarray(remember), np.asarray(use))
+    if ratio.ndim == 0:  # a single hour
+        return held_ratio(ratio[None], keep[None], take[None], first_ratio)[0]
     kept = np.full(ratio.shape[1:], first_ratio)
     result = np.empty(ratio.shape)
     for hour in range(ratio.shape[0]):

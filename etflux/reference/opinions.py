@@ -3,24 +3,20 @@
 References
 ----------
 .. [1] Vremec, Collenteur, Birk (2024), PyEt v1.3.1, Geosci. Model Dev. 17, 7083-7103: the library and its sources.
-.. [2] McMahon et al. (2013), Hydrol. Earth Syst. Sci. 17, 1331-1363: the wind function of Penman (1948).
+.. [2] McMahon et al. (2013), Hydrol. Earth Syst. Sci. 17, 1331-1363: the wind function of Penman (1956).
 """
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
-
 import numpy as np
 from numpy.typing import ArrayLike
 
-from etflux import humidity, solar
-from etflux.reference.radiation import net_radiation
+from etflux import humidity
 
-if TYPE_CHECKING:
-    from collections.abc import Mapping
-
-METHODS = ("hargreaves", "priestley_taylor", "makkink", "turc", "penman")
-PENMAN_WIND = {"aw": 2.626, "bw": 1.381}  # of Penman (1948) as [2] gives it; the library's own are not in mm/day
+NAMES = (
+    "eto_hargreaves_mm", "eto_priestley_taylor_mm", "eto_makkink_mm", "eto_turc_mm", "eto_penman_mm", "eto_spread_mm",
+)  # fmt: skip
+PENMAN_WIND = {"aw": 1.313, "bw": 1.381}  # the library's own numbers do not give mm/day
 
 
 def second_opinions(
@@ -30,6 +26,7 @@ def second_opinions(
     vapour_pressure_kpa: ArrayLike,
     rs_mj_m2_d: ArrayLike,
     u2_m_s: ArrayLike,
+    rn_mj_m2_d: ArrayLike,
     elevation_m: ArrayLike,
     latitude_deg: ArrayLike,
     rh_mean_pct: ArrayLike | None = None,
@@ -41,6 +38,8 @@ def second_opinions(
     dates : array_like of datetime64, shape (day,)
     t_max_c, t_min_c, vapour_pressure_kpa, rs_mj_m2_d, u2_m_s : array_like, shape (day, station) or (day,)
         As for :func:`etflux.reference.eto_fao56`.
+    rn_mj_m2_d : array_like
+        Net radiation of the grass reference, for all methods that need it. [MJ m-2 d-1]
     elevation_m, latitude_deg : array_like, shape (station,) or one number
         [m], [deg]
     rh_mean_pct : array_like, optional
@@ -49,59 +48,43 @@ def second_opinions(
     Returns
     -------
     dict of str to ndarray
-        "hargreaves", "priestley_taylor", "makkink", "turc", "penman", each at least 0, in the shape of `t_max_c`.
-        [mm d-1]
-
-    Notes
-    -----
-    Net radiation is that of the grass reference for all; Penman has the wind function 2.626 + 1.381 u2.
+        ``eto_<method>_mm`` by Hargreaves, Priestley-Taylor, Makkink, Turc and Penman (wind function
+        1.313 + 1.381 u2), each at least 0, and ``eto_spread_mm``, the largest less the smallest of them; in the shape
+        of `t_max_c`. [mm d-1]
     """
     import pyet
     import xarray as xr
 
     time = np.atleast_1d(np.asarray(dates)).astype("datetime64[ns]")
     shape = np.shape(t_max_c)
-    t_max, t_min, ea, rs, u2 = (
-        _as_day_station(values, shape) for values in (t_max_c, t_min_c, vapour_pressure_kpa, rs_mj_m2_d, u2_m_s)
+    t_max, t_min, ea, rs, u2, rn = (
+        _as_day_station(values, shape)
+        for values in (t_max_c, t_min_c, vapour_pressure_kpa, rs_mj_m2_d, u2_m_s, rn_mj_m2_d)
     )
-    if not np.isfinite(rs).any():  # pyet takes a record without any radiation for a mistaken unit
-        return {name: np.full(shape, np.nan) for name in METHODS}
+    if not np.isfinite(rs).any() or not np.isfinite(rn).any():  # pyet takes that for a mistaken unit
+        return {name: np.full(shape, np.nan) for name in NAMES}
     elevation, latitude = (np.broadcast_to(np.asarray(v, float), t_max.shape[1:]) for v in (elevation_m, latitude_deg))
-    ra = solar.extraterrestrial_radiation(latitude, solar.day_of_year(time)[:, None])
-    rn = net_radiation(rs, solar.clear_sky_radiation(ra, elevation), t_max, t_min, ea)
     rh = _mean_humidity(ea, t_max, t_min) if rh_mean_pct is None else _as_day_station(rh_mean_pct, shape)
 
     def days(values: np.ndarray) -> xr.DataArray:
         return xr.DataArray(values, dims=("time", "station"), coords={"time": time})
 
+    def across(values: np.ndarray) -> xr.DataArray:
+        return xr.DataArray(values, dims="station")
+
     t = days(0.5 * (t_max + t_min))
-    high = xr.DataArray(elevation, dims="station")
-    place = {"elevation": high, "rn": days(rn)}
+    place = {"elevation": across(elevation), "rn": days(rn)}
     with np.errstate(invalid="ignore", divide="ignore"):  # pyet divides the temperature by itself
-        found = {
-            "hargreaves": pyet.hargreaves(
-                t, days(np.maximum(t_max, t_min)), days(t_min), xr.DataArray(np.radians(latitude), dims="station")
-            ),
-            "priestley_taylor": pyet.priestley_taylor(t, **place),
-            "makkink": pyet.makkink(t, days(rs), elevation=high),
-            "turc": pyet.turc(t, days(rs), days(rh)),
-            "penman": pyet.penman(t, days(u2), tmax=days(t_max), tmin=days(t_min), ea=days(ea), **place, **PENMAN_WIND),
-        }
-    # Turc is for days above 0 degC: below, its temperature term changes sign twice
-    found["turc"] = found["turc"].where(t.values > 0.0, 0.0 * (rs + rh) + 0.0 * t.values)
-    return {name: np.asarray(values.values, float).reshape(shape) for name, values in found.items()}
-
-
-def spread(opinions: Mapping[str, ArrayLike]) -> np.ndarray:
-    """Largest less smallest of the opinions; NaN where one of them is. [mm d-1]
-
-    Examples
-    --------
-    >>> spread({"a": [4.0, 5.0], "b": [4.5, 3.0]})
-    array([0.5, 2. ])
-    """
-    stack = np.stack([np.asarray(values, float) for values in opinions.values()])
-    return stack.max(axis=0) - stack.min(axis=0)
+        found = [
+            pyet.hargreaves(t, days(np.maximum(t_max, t_min)), days(t_min), across(np.radians(latitude))),
+            pyet.priestley_taylor(t, **place),
+            pyet.makkink(t, days(rs), elevation=across(elevation)),
+            # a day at or below 0 degC is outside Turc's range and has nothing to evaporate
+            pyet.turc(t, days(rs), days(rh)).where(t.values > 0.0, 0.0 * (rs + rh + t.values)),
+            pyet.penman(t, days(u2), tmax=days(t_max), tmin=days(t_min), ea=days(ea), **place, **PENMAN_WIND),
+        ]
+    arrays = [np.asarray(values.values, float).reshape(shape) for values in found]
+    return dict(zip(NAMES, [*arrays, np.max(arrays, axis=0) - np.min(arrays, axis=0)], strict=True))
 
 
 def _as_day_station(values: ArrayLike, shape: tuple[int, ...]) -> np.ndarray:
