@@ -195,7 +195,7 @@ def _grass_marks(
                 at["defaulted"][station], "green-up: mean date of the latitude, a default", "green-up: freezes"
             )
             basis["marks"] = np.where(grass, np.where(mine, "green-up entered", how), basis["marks"])
-            basis["settled"] = np.where(grass & ~mine, at["settled"] | at["defaulted"][station], basis["settled"])
+            basis["settled"] = np.where(grass & ~mine, (at["settled"] | at["defaulted"])[station], basis["settled"])
     marks["greenup"], marks["freeze"], marks["end"] = np.array(greenups), np.array(freezes), np.array(ends)
 
 
