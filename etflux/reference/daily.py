@@ -25,7 +25,7 @@ from etflux.reference.radiation import (
 
 Surface = Literal["short", "tall"]
 
-# A block of days this large stays in the processor's cache: twice as fast as all days at once.
+# A block of days this large stays in the processor's cache, 1.3 to 1.6 times as fast as all days at once.
 BLOCK_VALUES = 24_000
 
 
