@@ -1,7 +1,8 @@
 """Water vapour in air: pressure, dew point, specific humidity, condensation level.
 
 Every function takes scalars or arrays that broadcast, and gives NaN where an input is NaN. Temperatures are in
-degrees Celsius, vapour and air pressure in kPa, specific humidity and mixing ratio in kg/kg.
+degrees Celsius, vapour and air pressure in kPa, specific humidity and mixing ratio in kg/kg
+(results print g/kg).
 
 References
 ----------

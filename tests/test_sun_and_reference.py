@@ -79,7 +79,7 @@ def test_clocks_turn_back():
 
 
 def test_equation_of_time_has_its_known_shape():
-    # 3 November +16.4 min, 11 February -14.2 min (almanacs, from memory); eqs. 32 and 33 are good to a week and a minute
+    # 3 November +16.4 min, 11 February -14.2 min (almanacs, from memory); eqs. 32 and 33 are good to a week and 1 min
     minutes = 60.0 * solar.seasonal_correction(DAYS)
     assert DAYS[minutes.argmax()] == pytest.approx(307, abs=7)
     assert minutes.max() == pytest.approx(16.4, abs=1.0)

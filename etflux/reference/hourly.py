@@ -94,7 +94,8 @@ def et_from_hours(
     Parameters
     ----------
     t_c, vapour_pressure_kpa, rs_mj_m2_h, u2_m_s : array_like, shape (hour, ...)
-        Means of the hour [degC], [kPa], [m s-1] and its solar radiation [MJ m-2 h-1]; hours in order, none left out.
+        Means of the hour [degC], [kPa], [m s-1] (wind as it is, no least value) and its solar radiation [MJ m-2 h-1];
+        hours in order, none left out.
     elevation_m, latitude_deg : array_like
         Of the station. [m], [deg]
     day, solar_hour : array_like, broadcastable to (hour, ...)

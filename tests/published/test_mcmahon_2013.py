@@ -2,7 +2,8 @@
 degrees south, as quoted in the pyet documentation (the supplement itself was not seen).
 
 The paper takes 273.2 for the zero of the absolute scale and 0.00163 P / latent heat for the psychrometric constant;
-FAO-56 takes 273.16 and 0.000665 P. Numbers that depend on these carry the tolerance that is noted beside them.
+FAO-56 takes 273.16 and 0.000665 P. Numbers that depend on these carry the tolerance that is noted beside them. Its
+Hargreaves value, 4.1129 mm/d, is for another form (Samani 2000) than eq. 52 of FAO-56, so it is no check here.
 """
 
 import numpy as np
