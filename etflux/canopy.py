@@ -336,7 +336,7 @@ def _measured(
     day: np.ndarray,
 ) -> np.ndarray:
     """Move Kcb to measured canopies: the ratio of measured to computed is drawn linearly between the dates."""
-    if not len(observations):
+    if not len(observations) or "observed_value" not in observations:
         return kcb
     words = observations["observed"].astype(str).str.strip().str.lower()
     rows = observations[words.isin(["canopy cover", "leaf area"]) & observations["observed_value"].notna()]
