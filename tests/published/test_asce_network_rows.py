@@ -115,3 +115,14 @@ def test_low_sun_takes_the_ratio_of_the_hour_before():
     night = evening & (rs == 0.0)
     assert night.any()
     assert found[night].tolist() == usual[night].tolist()
+
+
+def test_net_radiation_of_a_night_hour():
+    # by hand: sigma 2.042e-10 (ASCE-EWRI eq. 44), cloudiness factor of Rs/Rso 0.6, no sun
+    t, ea, u2 = 12.0, 1.1, 2.0
+    kelvin = t + 273.16
+    rn = -2.042e-10 * kelvin**4 * (0.34 - 0.14 * np.sqrt(ea)) * (1.35 * 0.6 - 0.35)
+    pressure = humidity.pressure_from_elevation(300.0)
+    expected = reference.et_hourly(t, ea, rn, u2, pressure, "asce_tall")
+    found = reference.et_from_hours([t], ea, 0.0, u2, 300.0, 40.0, 190, 1.5, "asce_tall", first_ratio=0.6)
+    assert found.item() == pytest.approx(expected, rel=1e-12)
