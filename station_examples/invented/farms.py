@@ -150,7 +150,7 @@ def _plants(row: dict[str, Any], number: int) -> dict[str, Any]:
         found["hybrid_heat_units"] = float(rng.choice([1440.0, 1500.0, 1560.0, 1610.0]))
         spread = (-7, 0, 11)
     elif cover == "soybean":
-        first = np.datetime64("2031-05-08") + int(rng.integers(0, 13)) + (0 if sandy else 4) + (3 if number < 5 else 0)
+        first = np.datetime64("2031-05-10") + int(rng.integers(0, 11)) + (0 if sandy else 4) + (3 if number < 5 else 0)
         spread = (-8, 0, 10)
         if number % 6 == 1:
             found["harvest_date"] = np.datetime64("2031-09-26")

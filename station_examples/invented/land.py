@@ -119,7 +119,7 @@ class _Lines:
         if (end, start) in self.drawn:
             return self.drawn[(end, start)][::-1]
         if (start, end) not in self.drawn:
-            winding = 0.17 if border == RIVER else float(self.rng.choice([0.0, 0.05, 0.11]))
+            winding = 0.15 if border == RIVER else float(self.rng.choice([0.0, 0.05, 0.11]))
             self.drawn[(start, end)] = self._wind(start, end, winding)
         return self.drawn[(start, end)]
 
@@ -129,7 +129,7 @@ class _Lines:
         levels = 0 if winding == 0.0 else max(2, min(5, int(np.log2(math.dist(start, end)))))
         for _ in range(levels):
             step = np.diff(points, axis=0)
-            aside = np.clip(normal(self.rng, len(step)), -1.6, 1.6) * winding
+            aside = np.clip(normal(self.rng, len(step)), -1.3, 1.3) * winding
             middle = points[:-1] + 0.5 * step + np.stack([-step[:, 1], step[:, 0]], axis=1) * aside[:, None]
             points = np.insert(points, np.arange(1, len(points)), middle, axis=0)
         return points
