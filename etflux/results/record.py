@@ -140,7 +140,7 @@ def run_identity(source: Mapping[str, Any], settings: Mapping[str, Any], version
     Examples
     --------
     >>> run_identity({"sha256": "aa"}, {"units": "si"}, "1.0")
-    '6cb1461a9a71'
+    '2acf79dd464d'
     """
     text = json.dumps([source.get("sha256", ""), dict(settings), version], sort_keys=True, default=str)
     return hashlib.sha256(text.encode()).hexdigest()[:12]

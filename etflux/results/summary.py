@@ -17,8 +17,8 @@ if TYPE_CHECKING:
     from etflux.results.record import Results
 
 # How far a county's contribution can be relied on, from least to most: the order of the brief.
-CONFIDENCE: Mapping[int, str] = {0: "no value", 1: "a range only", 2: "with care", 3: "nothing against it"}
-_A_RANGE = ("represented_low", "depths_differ", "cumulus")
+CONFIDENCE: Mapping[int, str] = {0: "no value", 1: "a range only", 2: "with care", 3: "no remark"}
+_A_RANGE = ("represented_low", "depths_differ")
 DEFAULT_HOUR = 15.0
 
 WATER_IN = ("rain_stand_mm", "irrigation_mm", "capillary_rise_mm")
@@ -26,7 +26,7 @@ WATER_OUT = ("runoff_mm", "drainage_mm", "evaporation_mm", "transpiration_mm")
 COUNTY_MEANS = (
     "eto_mm", "rain_mm", "et_stands_mm", "et_county_mm", "le_stands_w_m2", "le_county_w_m2", "le_daytime_w_m2",
     "represented_pct", "mixing_depth_m", "dew_point_mixed_c", "dew_point_without_c", "contribution_c",
-    "contribution_g_kg",
+    "contribution_g_kg", "contribution_same_day_c", "contribution_carried_c",
 )  # fmt: skip
 
 
@@ -95,7 +95,7 @@ def summarise(results: Results, day: np.datetime64) -> dict[str, Any]:
     means = {name: area_mean(values(county, name, day), area) for name in COUNTY_MEANS}
     flags, provisional = values(county, "flags", day), values(county, "provisional", day)
     rank = confidence(flags, provisional, values(county, "contribution_c", day))
-    counts = {word: 0 for word in ("error", "warning", "note")}
+    counts = dict.fromkeys(("error", "warning", "note"), 0)
     for finding in results.findings:
         counts[finding.severity] += 1
     volume = values(county, "water_volume_hm3", day)
@@ -131,8 +131,14 @@ def contribution_on(results: Results, days: ArrayLike) -> pd.DataFrame:
     return rows[np.isin(dates, np.asarray(days, "datetime64[D]")) & (rows["hour"] == hour)]
 
 
-def region_contribution(results: Results, days: ArrayLike, by: str) -> pd.DataFrame:
-    """Area mean over the counties with a value, by day and "cover" or "age_d".
+def crop_sources(results: Results) -> list[str]:
+    """Sources whose water makes the contribution: all but the rest of the counties."""
+    rest = set(results.stand["tag"].to_numpy()[results.stand["kind"].to_numpy() == "rest"].astype(str))
+    return [str(tag) for tag in pd.unique(results.contribution["cover"]) if tag not in rest]
+
+
+def region_contribution(results: Results, days: ArrayLike, by: str = "cover") -> pd.DataFrame:
+    """Area mean over the counties with a value, by day and "cover" or "age_d", of the crops' water.
 
     Returns
     -------
@@ -140,6 +146,7 @@ def region_contribution(results: Results, days: ArrayLike, by: str) -> pd.DataFr
         Index the days, one column per cover or age. [degC of difference]
     """
     rows = contribution_on(results, days)
+    rows = rows[rows["cover"].isin(crop_sources(results))]
     days = np.asarray(days, "datetime64[D]")
     if not len(rows):
         return pd.DataFrame(index=pd.to_datetime(days))
@@ -157,8 +164,6 @@ def _contribution(results: Results, day: np.datetime64, rank: np.ndarray) -> dic
     county = results.county
     found = values(county, "contribution_c", day)
     ids = county["county_id"].to_numpy().astype(str)
-    ages = region_contribution(results, [day], "age_d")
-    row: dict[int, float] = {int(age): float(ages[age].iloc[0]) for age in ages} if len(ages.columns) else {}
     ranked = np.where(rank >= 2, found, np.nan)
     any_ranked = bool(np.isfinite(ranked).any())
     return {
@@ -168,8 +173,6 @@ def _contribution(results: Results, day: np.datetime64, rank: np.ndarray) -> dic
         "most_c": float(np.nanmax(ranked)) if any_ranked else float("nan"),
         "least_county": str(ids[np.nanargmin(ranked)]) if any_ranked else "",
         "most_county": str(ids[np.nanargmax(ranked)]) if any_ranked else "",
-        "same_day_c": row.get(0, float("nan")),
-        "carried_c": sum(value for age, value in row.items() if age > 0) if row else float("nan"),
     }
 
 
@@ -177,7 +180,7 @@ def _covers(results: Results, day: np.datetime64) -> list[dict[str, Any]]:
     """One record per tag: area, water use, contribution."""
     stand = results.stand.sel(date=day)
     tags, area = stand["tag"].to_numpy().astype(str), stand["area_km2"].to_numpy()
-    by_cover = region_contribution(results, [day], "cover")
+    by_cover = region_contribution(results, [day])
     records = []
     for tag in pd.unique(tags):
         here = tags == tag

@@ -102,7 +102,8 @@ def _stand_dataset(rng, units, dates, eto, rain):
     labels = ("stand_id", "part", "kind", "tag", "county_id", "cover_id", "soil_id", "water_regime", "area_km2")
     return xr.Dataset(
         {name: (("date", "unit_id"), array) for name, array in values.items()},
-        coords={"date": dates, "unit_id": units["unit_id"].to_numpy(object), "stored_start_mm": ("unit_id", np.full(n, -20.0)),
+        coords={"date": dates, "unit_id": units["unit_id"].to_numpy(object),
+                "stored_start_mm": ("unit_id", np.full(n, -20.0)),
                 **{name: ("unit_id", units[name].to_numpy()) for name in labels}},
     )  # fmt: skip
 
@@ -142,13 +143,17 @@ def _county_dataset(rng, stand, units, dates, eto, rain, air):
     estimated = np.where(rng.random((n_days, n)) < 0.1, 40.0, 0.0)
     values = {
         "eto_mm": np.broadcast_to(eto, (n_days, n)), "rain_mm": np.broadcast_to(rain, (n_days, n)),
-        "et_stands_mm": et_stands, "et_county_mm": et, "le_stands_w_m2": 28.35 * et_stands, "le_county_w_m2": 28.35 * et,
-        "le_daytime_w_m2": 48.0 * et, "le_transpiration_w_m2": 24.0 * et, "le_evaporation_w_m2": 4.35 * et,
+        "et_stands_mm": et_stands, "et_county_mm": et, "le_stands_w_m2": 28.35 * et_stands,
+        "le_county_w_m2": 28.35 * et, "le_daytime_w_m2": 48.0 * et,
+        "le_transpiration_w_m2": 24.0 * et, "le_evaporation_w_m2": 4.35 * et,
         "water_volume_hm3": et * 0.5, "represented_pct": np.broadcast_to(100.0 * share, (n_days, n)),
         "mixing_depth_m": depth, "depth_a0_m": 0.85 * depth, "humidity_mixed_g_kg": with_water * 0.8,
-        "theta_mixed_c": with_water + 10.0, "dew_point_mixed_c": with_water, "dew_point_without_c": with_water - contribution,
-        "contribution_c": contribution, "contribution_g_kg": 0.75 * contribution, "contribution_low_c": contribution - 0.5,
-        "contribution_high_c": contribution + 0.5, "lcl_m": depth + 100.0, "available_energy_mj_m2_d": 0.0 * depth + 14.0,
+        "theta_mixed_c": with_water + 10.0, "dew_point_mixed_c": with_water,
+        "dew_point_without_c": with_water - contribution, "contribution_c": contribution,
+        "contribution_same_day_c": 0.6 * contribution, "contribution_carried_c": 0.4 * contribution,
+        "contribution_g_kg": 0.75 * contribution, "contribution_low_c": contribution - 0.5,
+        "contribution_high_c": contribution + 0.5, "lcl_m": depth + 100.0,
+        "available_energy_mj_m2_d": 0.0 * depth + 14.0,
         "sensible_heat_mj_m2_d": 0.0 * depth + 3.0, "heat_elsewhere_mj_m2_d": 0.0 * depth + 0.5, "flags": flags,
         "estimated_share_pct": estimated,
         "provisional": np.where(estimated > 20.0, flag_bits("provisional")["weather"], 0).astype(np.uint8),
@@ -167,7 +172,7 @@ def _county_dataset(rng, stand, units, dates, eto, rain, air):
 
 def _contribution(county):
     pieces = []
-    share = {"corn": 0.5, "soybean": 0.2, "grass": 0.1, "rest": 0.2}
+    share = {"corn": 0.6, "soybean": 0.25, "grass": 0.15, "rest": 0.2}  # the rest comes on top
     ages = {0: 0.6, 1: 0.3, 2: 0.1}
     whole = county["contribution_c"].to_series().dropna()
     for cover, part in share.items():
@@ -230,14 +235,17 @@ def make(counties=24, days=183, stations=3, per_county=4, air=True, units="si", 
         "budget": pd.concat([closure, pd.DataFrame(energy, columns=closure.columns)], ignore_index=True),
         "marks": pd.DataFrame(marks, columns=["unit_id", "mark", "date", "basis"]),
         "fills": pd.DataFrame([(f"N{stations}", "rs_mj_m2_d", "ratio to clear sky of the neighbour N1",
-                                dates[5], dates[8], 4)],
+                                dates[min(5, days - 1)], dates[min(8, days - 1)], 4)],
                               columns=["station_id", "quantity", "method", "first", "last", "days"]),
         "names": pd.DataFrame(names, columns=["kind", "id", "name"]),
         "methods": pd.DataFrame([("Reference ET", "Grass reference evapotranspiration, daily", "FAO-56 eq. 6")],
                                 columns=["step", "method", "source"]),
-        "findings": [Finding("pyranometer-drift", "weather", 3, "rs_mj_m2_d", 0.93, f"station N{stations}", "6 % in the season"),
-                     Finding("value-repeated", "weather", 8, "t_min_c", 14.2, "station N1, 2031-05-04")],
-        "settings": settings, "source": {"path": "somewhere/upper_basin.xlsx", "sha256": "ab" * 32, "etflux_template": 1},
+        "findings": [
+            Finding("pyranometer-drift", "weather", 3, "rs_mj_m2_d", 0.93, f"station N{stations}", "6 % in the season"),
+            Finding("value-repeated", "weather", 8, "t_min_c", 14.2, "station N1, 2031-05-04"),
+        ],
+        "settings": settings,
+        "source": {"path": "somewhere/upper_basin.xlsx", "sha256": "ab" * 32, "etflux_template": 1},
         "issued": dt.datetime(2031, 10, 1, 6, 10, tzinfo=dt.UTC),
     }  # fmt: skip
     return Results(**{**made, **changes})

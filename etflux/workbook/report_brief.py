@@ -1,0 +1,312 @@
+"""The brief: one printed page that answers, for one day, how much, where, from what, and how sure.
+
+From the top: the numbers a briefing opens with; a paragraph to paste; the counties, least certain first so that nobody
+reads a number without its doubt; the season and the episode as charts; what the letters mean; the cautions; which run.
+"""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+import pandas as pd
+
+from etflux.results import confidence
+from etflux.results.summary import CONFIDENCE, says_stress, values
+from etflux.variables import System, from_si, quantity
+from etflux.workbook.report_charts import charts_of
+from etflux.workbook.report_days import stand_columns
+from etflux.workbook.report_sheet import put
+from etflux.workbook.report_style import (
+    FAINT,
+    INK,
+    MARKED,
+    SOFT,
+    Look,
+    lines_of,
+    number_format,
+    set_page,
+)
+from etflux.workbook.report_words import (
+    CAUTIONS,
+    NOT_COMPUTED,
+    clean_text,
+    day_words,
+    identity_line,
+    marked_words,
+    missing_reason,
+    paragraph,
+    remark_letters,
+    shown,
+)
+
+if TYPE_CHECKING:
+    from xlsxwriter.chart import Chart
+    from xlsxwriter.workbook import Workbook
+    from xlsxwriter.worksheet import Worksheet
+
+    from etflux.results import Results
+
+WIDTHS = (17, 8, 9, 8, 8, 8, 10, 8, 8, 13, 14, 1.5, 9, 9, 9, 9, 9)
+TABLE_COLUMNS, CHART_COLUMN, LAST = 11, 12, len(WIDTHS) - 1
+TILES = ((0, 1), (2, 4), (5, 7), (8, 9), (10, 12), (13, LAST))
+MOST_COUNTIES = 30
+FEW_COUNTIES = 8  # with so few there is room for stands, and the charts go below the tables, not beside them
+MOST_STANDS = 14
+STAND_COLUMNS = (
+    "Stand", "Cover", "Growth stage", "Crop water use", "Water left", "Irrigation need", "Days to stress", "Marked",
+)  # fmt: skip
+ROW_POINTS, ROW_PIXELS = 15.75, 21
+HEADING_POINTS = 40.0
+
+
+def write_brief(
+    results: Results, book: Workbook, sheet: Worksheet, look: Look, system: System, day: np.datetime64
+) -> None:
+    """Write the brief and, on a sheet of their own, the numbers of its charts."""
+    numbers = results.summary(str(day))
+    set_page(sheet, system, identity_line(results))
+    sheet.fit_to_pages(1, 1)
+    sheet.hide_gridlines(2)
+    for column, width in enumerate(WIDTHS):
+        sheet.set_column(column, column, width)
+    _head(results, sheet, look, numbers)
+    _tiles(sheet, look, numbers, system)
+    text = paragraph(results, numbers, system)
+    sheet.merge_range(6, 0, 6, LAST, text, look.wrapped(font_size=10))
+    sheet.set_row(6, 13.5 * lines_of(text, sum(WIDTHS), 10) + 2)
+    sheet.set_row(7, 6)
+    few = results.county.sizes["county_id"] <= FEW_COUNTIES
+    end, legend = _county_table(results, sheet, look, system, day, 8)
+    if few:
+        end = _stand_table(results, sheet, look, system, day, end + 1)
+    charts = charts_of(results, book, look, system, day)
+    end = _place_charts(sheet, charts, few, end)
+    end = _foot(sheet, look, end + 1, legend)
+    sheet.print_area(0, 0, end, LAST)
+
+
+def _head(results: Results, sheet: Worksheet, look: Look, numbers: dict[str, Any]) -> None:
+    title = clean_text(numbers["title"]) or "Crop water use and its moisture in the air"
+    sheet.merge_range(0, 0, 0, LAST, "", look())
+    sheet.write_string(0, 0, f"{title}: {day_words(numbers['day'])}", look(bold=True, font_size=16))
+    sheet.set_row(0, 24)
+    sheet.merge_range(1, 0, 1, LAST, "", look())
+    season = f"Record {numbers['first_day']} to {numbers['last_day']}. {identity_line(results)}"
+    sheet.write_string(1, 0, season, look(font_color=SOFT))
+
+
+def _tiles(sheet: Worksheet, look: Look, numbers: dict[str, Any], system: System) -> None:
+    """Headline numbers: what it is, the number, what stands beside it."""
+
+    def of(name: str) -> str:
+        return shown(name, numbers[name], system)
+
+    stands = numbers["stands"]
+    has_air = np.isfinite(numbers["contribution_c"])
+    area = shown("area_km2", numbers["county_area_km2"], system, decimals=0)
+    need = f"{stands['need']} with an irrigation need"
+    parts, without = "no value: see the remarks", ""
+    if has_air:
+        parts = f"{of('contribution_same_day_c')} today's water, {of('contribution_carried_c')} carried"
+        without = f"{of('dew_point_without_c')} without the crops' water"
+    rows = (
+        ("Crops added to the dew point", of("contribution_c"), parts),
+        ("Dew point of the mixed air", of("dew_point_mixed_c"), without),
+        ("Latent flux, mean of the day", of("le_county_w_m2"), f"{of('le_daytime_w_m2')} by daylight"),
+        ("Water use of the counties", of("et_county_mm"), f"reference ET {of('eto_mm')}"),
+        ("Water into the air", of("water_volume_hm3"), f"from {area}"),
+        ("Stands short of water", f"{stands['stressed']} of {stands['count']}", need),
+    )  # fmt: skip
+    for (first, last), (label, value, beside) in zip(TILES, rows, strict=True):
+        for row, text, look_of in (
+            (2, label, look(font_color=SOFT, top=2, border_color=INK, align="left")),
+            (3, value, look(bold=True, font_size=15, align="left")),
+            (4, beside, look(font_color=SOFT, align="left", font_size=8)),
+        ):
+            sheet.merge_range(row, first, row, last, text, look_of)
+    sheet.set_row(2, 15)
+    sheet.set_row(3, 21)
+    sheet.set_row(4, 13)
+    sheet.set_row(5, 6)
+
+
+def _county_table(
+    results: Results, sheet: Worksheet, look: Look, system: System, day: np.datetime64, first_row: int
+) -> tuple[int, list[str]]:
+    """Counties on the day, least certain first; gives the row below and the legend."""
+    county = results.county
+    flags, provisional = values(county, "flags", day), values(county, "provisional", day)
+    contribution = values(county, "contribution_c", day)
+    rank = confidence(flags, provisional, contribution)
+    order = np.lexsort((-np.nan_to_num(contribution, nan=-np.inf), rank))
+    listed = order[:MOST_COUNTIES]
+    letters, legend = remark_letters(flags[listed], provisional[listed])
+    share = values(county, "estimated_share_pct", day)
+    short, of = _short_of_water(results, day)
+    _county_headings(sheet, look, system, first_row)
+    names = results.names_by_id("county")
+    ids = county["county_id"].to_numpy().astype(str)
+    for offset, (place, remark) in enumerate(zip(listed, letters, strict=True)):
+        row = first_row + 1 + offset
+        sheet.set_row(row, ROW_POINTS)
+        marked = bool(marked_words(share[place], provisional[place]).item())
+        cell = _cell_look(look, marked)
+        put(sheet, row, 0, names.get(ids[place], ids[place]), cell("@", "left"))
+        for column, name in (
+            (1, "le_county_w_m2"),
+            (2, "et_county_mm"),
+            (4, "mixing_depth_m"),
+            (5, "dew_point_mixed_c"),
+        ):
+            value = from_si(values(county, name, day)[place], name, system).item()
+            if name == "mixing_depth_m" and np.isfinite(value):
+                value = round(value, -1)  # no depth is known to a metre or a foot
+            put(sheet, row, column, value, cell(number_format(name, system)))
+        put(sheet, row, 3, f"{short[place]} of {of[place]}" if of[place] else "none", cell("@", "center"))
+        _contribution_cells(results, sheet, row, cell, system, day, int(place), int(rank[place]))
+        put(sheet, row, 9, CONFIDENCE[int(rank[place])], cell("@", "left"))
+        estimate = f"{share[place]:.0f} % est." if share[place] > 0.0 else ""
+        put(sheet, row, 10, ", ".join(part for part in (remark, estimate) if part), cell("@", "left"))
+    reasons = sorted(set(missing_reason(flags, contribution)) & {NOT_COMPUTED})
+    legend += [f"No value: {reason}" for reason in reasons]
+    if len(order) > MOST_COUNTIES:
+        legend.insert(
+            0, f"The {MOST_COUNTIES} least certain of {len(order)} counties; all are on the sheet County days"
+        )
+    if np.nansum(share[listed]) > 0.0:
+        legend.append("est.: the share of the day's weather that was estimated")
+    return first_row + 1 + len(listed), legend
+
+
+def _cell_look(look: Look, marked: bool) -> Any:
+    tint = {"bg_color": MARKED} if marked else {}
+
+    def made(number_format_: str, align: str = "right") -> Any:
+        indent = {"indent": 1} if align == "left" else {}
+        return look(num_format=number_format_, align=align, bottom=1, border_color=FAINT, **tint, **indent)
+
+    return made
+
+
+def _contribution_cells(
+    results: Results, sheet: Worksheet, row: int, cell: Any, system: System, day: np.datetime64, place: int, rank: int
+) -> None:
+    """A number, or a range where no single number is known well enough; parts only beside a number."""
+    county = results.county
+    shape = number_format("contribution_c", system)
+    if rank == 1:
+        ends = [values(county, name, day)[place] for name in ("contribution_low_c", "contribution_high_c")]
+        text = " to ".join(shown("contribution_c", float(end), system, unit=False) for end in ends)
+        put(sheet, row, 6, text, cell("@", "right"))
+    else:
+        value = from_si(values(county, "contribution_c", day)[place], "contribution_c", system).item()
+        put(sheet, row, 6, value, cell(shape))
+    for column, name in ((7, "contribution_same_day_c"), (8, "contribution_carried_c")):
+        part = values(county, name, day)[place] if rank > 1 else np.nan
+        put(sheet, row, column, from_si(part, name, system).item(), cell(shape))
+
+
+def _county_headings(sheet: Worksheet, look: Look, system: System, row: int) -> None:
+    def unit(name: str) -> str:
+        return quantity(name).unit_in(system)
+
+    degrees = unit("contribution_c")
+    headings = (
+        "County", f"Latent flux ({unit('le_county_w_m2')})", f"Water use ({unit('et_county_mm')})",
+        "Stands short of water",
+        f"Mixing depth ({unit('mixing_depth_m')})", f"Dew point ({degrees})", f"Crops added ({degrees})",
+        f"of it today's ({degrees})", f"of it carried ({degrees})", "How sure", "Remarks",
+    )  # fmt: skip
+    for column, heading in enumerate(headings):
+        sheet.write_string(row, column, heading, look.heading(over_text=column in {0, 9, 10}))
+    sheet.set_row(row, HEADING_POINTS)
+
+
+def _stand_table(
+    results: Results, sheet: Worksheet, look: Look, system: System, day: np.datetime64, first_row: int
+) -> int:
+    """Stands on the day, those that will be short of water soonest first; gives the row below."""
+    own = results.stand.isel(unit_id=np.flatnonzero(results.stand["kind"].to_numpy() == "stand")).sel(date=[day])
+    if not own.sizes["unit_id"]:
+        return first_row - 1
+    columns, marked = stand_columns(results, own, system)
+    by_name = {column.heading.split(" (")[0]: column for column in columns}
+    soon = by_name["Days to stress"].values
+    order = np.lexsort((by_name["Water left"].values, np.nan_to_num(soon, nan=np.inf)))[:MOST_STANDS]
+    spans = ((0, 0), (1, 2), (3, 4), (5, 5), (6, 6), (7, 7), (8, 8), (9, LAST))
+    for (first, last), name in zip(spans, STAND_COLUMNS, strict=True):
+        column = by_name[name]
+        over_text = column.values.dtype.kind == "O"
+        _spread_cell(sheet, first_row, first, last, column.heading, look.heading(over_text=over_text))
+        for offset, place in enumerate(order):
+            cell = _cell_look(look, bool(marked[place]))
+            value = column.values[place]
+            if name == "Stand" and by_name["Part"].values[place]:
+                value = f"{value}, {by_name['Part'].values[place]}"
+            if name == "Days to stress" and value == 0.0:
+                value = "now"
+            shape = cell(column.format, "left" if over_text else "right")
+            _spread_cell(sheet, first_row + 1 + offset, first, last, value, shape)
+    sheet.set_row(first_row, HEADING_POINTS)
+    end = first_row + 1 + len(order)
+    if own.sizes["unit_id"] > len(order):
+        more = (
+            f"The {len(order)} that will be short soonest of {own.sizes['unit_id']}; all are on Stand days."
+        )
+        sheet.write_string(end, 0, more, look(font_color=SOFT, font_size=8))
+        end += 1
+    return end
+
+
+def _spread_cell(sheet: Worksheet, row: int, first: int, last: int, value: Any, shape: Any) -> None:
+    """One value over one or more columns."""
+    if last > first:
+        sheet.merge_range(row, first, row, last, "", shape)
+    put(sheet, row, first, value, shape)
+
+
+def _short_of_water(results: Results, day: np.datetime64) -> tuple[list[int], list[int]]:
+    """Stands short of water and stands in all, by county."""
+    stand = results.stand.sel(date=day)
+    own = stand["kind"].to_numpy() == "stand"
+    short = own & says_stress(values(stand, "stage_code")) & (values(stand, "ks") < 1.0)
+    rows = pd.DataFrame(
+        {"county": stand["county_id"].to_numpy().astype(str), "stand": stand["stand_id"].to_numpy(), "short": short}
+    )[own]
+    by_stand = rows.groupby(["county", "stand"])["short"].any().groupby("county")
+    ids = results.county["county_id"].to_numpy().astype(str)
+    counts = by_stand.agg(["sum", "size"]).reindex(ids).fillna(0).astype(int)
+    return counts["sum"].tolist(), counts["size"].tolist()
+
+
+def _place_charts(sheet: Worksheet, charts: list[Chart], few: bool, end: int) -> int:
+    """Beside the table, one above the other; below it, side by side, when there are few counties."""
+    if few:
+        width, height = sum(WIDTHS) * 7.4 / 2.0, 16 * ROW_PIXELS
+        for position, chart in enumerate(charts):
+            chart.set_size({"width": width, "height": height})
+            sheet.insert_chart(end + 1, 0 if position == 0 else 7, chart, {"object_position": 2})
+        return end + 18 if charts else end
+    rows = max(end - 8, 24)
+    half = (HEADING_POINTS / ROW_POINTS + rows - 1) * ROW_PIXELS / 2.0
+    for position, chart in enumerate(charts):
+        chart.set_size({"width": 5 * 68, "height": half - 6})
+        sheet.insert_chart(
+            8, CHART_COLUMN, chart, {"y_offset": position * half, "object_position": 2, "x_offset": 0}
+        )  # fmt: skip
+    return 8 + rows
+
+
+def _foot(sheet: Worksheet, look: Look, row: int, legend: list[str]) -> int:
+    """What letters mean, and the cautions."""
+    order = (
+        "Least certain first, then by what the crops added. Tinted rows rest on estimated weather or may still move."
+    )
+    if legend:
+        order += " Remarks: " + "; ".join(legend) + "."
+    for text, extra in ((order, {"font_size": 8}), (" ".join(CAUTIONS), {"bold": True})):
+        sheet.merge_range(row, 0, row, LAST, text, look.wrapped(**extra))
+        sheet.set_row(row, 12.0 * lines_of(text, sum(WIDTHS), 8 if "font_size" in extra else 9.5) + 3)
+        row += 1
+    return row - 1
