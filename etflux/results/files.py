@@ -38,7 +38,7 @@ _STALE_SECONDS = 86400.0
 # Ten decimals: the two thousand or so depths that enter a year's water balance of one stand then miss closure by
 # 1e-7 mm at the very worst. Seventeen digits would be exact, as results.nc is, for twice the size.
 DECIMALS = 10
-BLOCK_ROWS = 200_000
+BLOCK_ROWS = 20_000  # made into text at once
 PARQUET_ROWS = 1_000_000
 
 
@@ -195,27 +195,36 @@ def _has_pyarrow() -> bool:
 
 
 def _write_table(results: Results, name: str, path: Path) -> None:
+    exact = tables.source_of(name) == "frame"  # short tables; the budgets among them must close to 1e-9
     with path.open("w", encoding="utf-8", newline="") as out:
-        for count, block in enumerate(results.blocks(name, BLOCK_ROWS)):
-            exact = tables.source_of(name) == "frame"  # short tables; the budgets among them must close to 1e-9
-            for column in block.columns:
-                block[column] = _written(block[column], exact)
-            block.to_csv(out, index=False, header=count == 0, lineterminator="\n")
+        out.write(",".join(tables.columns(name)) + "\n")
+        for block in results.blocks(name, BLOCK_ROWS):
+            texts = [_written(block[column], exact) for column in block.columns]
+            out.writelines(line + "\n" for line in map(",".join, zip(*texts, strict=True)))
 
 
-def _written(values: pd.Series, exact: bool) -> pd.Series:
-    """A column as it goes to a file."""
-    kind = tables.column_kind(str(values.name))
-    if kind == "date":
+def _written(values: pd.Series, exact: bool) -> list[str]:
+    """A column as it goes to a file, half the time of the library's own writer; a missing value is blank."""
+    name = str(values.name)
+    if tables.column_kind(name) == "date":
         days = pd.to_datetime(values).to_numpy().astype("datetime64[D]")
-        text = np.datetime_as_string(days).astype(object)
-        text[np.isnat(days)] = ""
-        return pd.Series(text, index=values.index)
-    if str(values.name) in tables.free_text():
-        return values.map(tables.guarded)
-    if kind == "number" and not exact and values.dtype.kind == "f":
-        return values.round(DECIMALS) + 0.0  # no minus zero
-    return values
+        return np.where(np.isnat(days), "", np.datetime_as_string(days)).tolist()
+    if values.dtype.kind == "f":
+        numbers = values.to_numpy() if exact else values.to_numpy().round(DECIMALS) + 0.0  # no minus zero
+        return ["" if number != number else repr(number) for number in numbers.tolist()]
+    if values.dtype.kind in "iu":
+        return list(map(str, values.tolist()))
+    free = name in tables.free_text()
+    made = {value: _quoted(value, free) for value in set(values)}
+    return [made[value] for value in values]
+
+
+def _quoted(value: Any, free_text: bool) -> str:
+    """A text or a number of a mixed column, quoted where the format asks for it."""
+    if value is None or value is pd.NA or value != value:
+        return ""
+    text = str(tables.guarded(value) if free_text else value)
+    return '"' + text.replace('"', '""') + '"' if any(mark in text for mark in ',"\r\n') else text
 
 
 def _write_parquet(results: Results, name: str, path: Path) -> None:
@@ -224,7 +233,7 @@ def _write_parquet(results: Results, name: str, path: Path) -> None:
 
     writer = None
     try:
-        for block in results.blocks(name, BLOCK_ROWS):
+        for block in results.blocks(name, 10 * BLOCK_ROWS):
             table = pa.Table.from_pandas(block, preserve_index=False)
             writer = writer or pq.ParquetWriter(path, table.schema)
             writer.write_table(table)
@@ -235,7 +244,7 @@ def _write_parquet(results: Results, name: str, path: Path) -> None:
 
 def _read_table(folder: Path, name: str) -> pd.DataFrame:
     parquet = folder / f"{name}.parquet"
-    if parquet.is_file():
+    if parquet.is_file() and not (folder / f"{name}.csv").is_file():
         return pd.read_parquet(parquet)
     kinds = {column: tables.column_kind(column) for column in tables.columns(name)}
     text = {column: str for column, kind in kinds.items() if kind == "text"}

@@ -41,6 +41,7 @@ from etflux.workbook.report_words import (
 )
 
 if TYPE_CHECKING:
+    import xarray as xr
     from xlsxwriter.chart import Chart
     from xlsxwriter.workbook import Workbook
     from xlsxwriter.worksheet import Worksheet
@@ -48,7 +49,7 @@ if TYPE_CHECKING:
     from etflux.results import Results
 
 WIDTHS = (17, 8, 9, 8, 8, 8, 10, 8, 8, 13, 14, 1.5, 9, 9, 9, 9, 9)
-TABLE_COLUMNS, CHART_COLUMN, LAST = 11, 12, len(WIDTHS) - 1
+LAST_OF_TABLE, CHART_COLUMN, LAST = 10, 12, len(WIDTHS) - 1
 TILES = ((0, 1), (2, 4), (5, 7), (8, 9), (10, 12), (13, LAST))
 MOST_COUNTIES = 30
 FEW_COUNTIES = 8  # with so few there is room for stands, and the charts go below the tables, not beside them
@@ -135,48 +136,65 @@ def _county_table(
     results: Results, sheet: Worksheet, look: Look, system: System, day: np.datetime64, first_row: int
 ) -> tuple[int, list[str]]:
     """Counties on the day, least certain first; gives the row below and the legend."""
-    county = results.county
-    flags, provisional = values(county, "flags", day), values(county, "provisional", day)
-    contribution = values(county, "contribution_c", day)
+    today = results.county.sel(date=day)
+    flags, provisional, share = (values(today, name) for name in ("flags", "provisional", "estimated_share_pct"))
+    contribution = values(today, "contribution_c")
     rank = confidence(flags, provisional, contribution)
     order = np.lexsort((-np.nan_to_num(contribution, nan=-np.inf), rank))
     listed = order[:MOST_COUNTIES]
     letters, legend = remark_letters(flags[listed], provisional[listed])
-    share = values(county, "estimated_share_pct", day)
-    short, of = _short_of_water(results, day)
+    cells = {column: text[listed] for column, text in _county_cells(results, today, system, rank, day).items()}
+    marked = marked_words(share, provisional)[listed] != ""
+    for offset, remark in enumerate(letters):
+        estimated = f"{share[listed[offset]]:.0f} % est." if share[listed[offset]] > 0.0 else ""
+        cells[LAST_OF_TABLE][offset] = ", ".join(part for part in (remark, estimated) if part)
     _county_headings(sheet, look, system, first_row)
-    names = results.names_by_id("county")
-    ids = county["county_id"].to_numpy().astype(str)
-    for offset, (place, remark) in enumerate(zip(listed, letters, strict=True)):
+    shapes = {1: "le_county_w_m2", 2: "et_county_mm", 4: "mixing_depth_m", 5: "dew_point_mixed_c"}
+    for offset in range(len(listed)):
         row = first_row + 1 + offset
         sheet.set_row(row, ROW_POINTS)
-        marked = bool(marked_words(share[place], provisional[place]).item())
-        cell = _cell_look(look, marked)
-        put(sheet, row, 0, names.get(ids[place], ids[place]), cell("@", "left"))
-        for column, name in (
-            (1, "le_county_w_m2"),
-            (2, "et_county_mm"),
-            (4, "mixing_depth_m"),
-            (5, "dew_point_mixed_c"),
-        ):
-            value = from_si(values(county, name, day)[place], name, system).item()
-            if name == "mixing_depth_m" and np.isfinite(value):
-                value = round(value, -1)  # no depth is known to a metre or a foot
-            put(sheet, row, column, value, cell(number_format(name, system)))
-        put(sheet, row, 3, f"{short[place]} of {of[place]}" if of[place] else "none", cell("@", "center"))
-        _contribution_cells(results, sheet, row, cell, system, day, int(place), int(rank[place]))
-        put(sheet, row, 9, CONFIDENCE[int(rank[place])], cell("@", "left"))
-        estimate = f"{share[place]:.0f} % est." if share[place] > 0.0 else ""
-        put(sheet, row, 10, ", ".join(part for part in (remark, estimate) if part), cell("@", "left"))
-    reasons = sorted(set(missing_reason(flags, contribution)) & {NOT_COMPUTED})
-    legend += [f"No value: {reason}" for reason in reasons]
-    if len(order) > MOST_COUNTIES:
-        legend.insert(
-            0, f"The {MOST_COUNTIES} least certain of {len(order)} counties; all are on the sheet County days"
-        )
+        shape = _cell_look(look, bool(marked[offset]))
+        for column, texts in cells.items():
+            side = {0: "left", 3: "center", 9: "left", LAST_OF_TABLE: "left"}.get(column, "right")
+            written = number_format(shapes.get(column, "contribution_c"), system) if side == "right" else "@"
+            put(sheet, row, column, texts[offset], shape(written, side))
+    if (missing_reason(flags, contribution) == NOT_COMPUTED).any():
+        legend.append(f"no value: {NOT_COMPUTED}")
+    if len(order) > len(listed):
+        legend.insert(0, f"The {len(listed)} least certain of {len(order)} counties; all are on the sheet County days")
     if np.nansum(share[listed]) > 0.0:
         legend.append("est.: the share of the day's weather that was estimated")
     return first_row + 1 + len(listed), legend
+
+
+def _county_cells(
+    results: Results, today: xr.Dataset, system: System, rank: np.ndarray, day: np.datetime64
+) -> dict[int, np.ndarray]:
+    """What stands in each column for each county: a number, or a range where no single one is known well enough."""
+
+    def people(name: str) -> np.ndarray:
+        return from_si(values(today, name), name, system)
+
+    names, ids = results.names_by_id("county"), today["county_id"].to_numpy().astype(str)
+    short, of = _short_of_water(results, day)
+    ends = [people(name) for name in ("contribution_low_c", "contribution_high_c")]
+    places = quantity("contribution_c").decimals_in(system)
+    ranges = [f"{low:.{places}f} to {high:.{places}f}" for low, high in zip(*ends, strict=True)]
+    a_range = (rank == 1) & np.isfinite(ends[0]) & np.isfinite(ends[1])
+    columns: dict[int, Any] = {
+        0: [names.get(name, name) for name in ids],
+        1: people("le_county_w_m2"),
+        2: people("et_county_mm"),
+        3: [f"{some} of {whole}" if whole else "none" for some, whole in zip(short, of, strict=True)],
+        4: np.round(people("mixing_depth_m"), -1),  # no depth is known to a metre or a foot
+        5: people("dew_point_mixed_c"),
+        6: np.where(a_range, np.array(ranges, dtype=object), people("contribution_c").astype(object)),
+        7: np.where(rank > 1, people("contribution_same_day_c"), np.nan),
+        8: np.where(rank > 1, people("contribution_carried_c"), np.nan),
+        9: [CONFIDENCE[int(code)] for code in rank],
+        LAST_OF_TABLE: [""] * len(ids),
+    }
+    return {column: np.array(list(texts), dtype=object) for column, texts in columns.items()}
 
 
 def _cell_look(look: Look, marked: bool) -> Any:
@@ -187,24 +205,6 @@ def _cell_look(look: Look, marked: bool) -> Any:
         return look(num_format=number_format_, align=align, bottom=1, border_color=FAINT, **tint, **indent)
 
     return made
-
-
-def _contribution_cells(
-    results: Results, sheet: Worksheet, row: int, cell: Any, system: System, day: np.datetime64, place: int, rank: int
-) -> None:
-    """A number, or a range where no single number is known well enough; parts only beside a number."""
-    county = results.county
-    shape = number_format("contribution_c", system)
-    if rank == 1:
-        ends = [values(county, name, day)[place] for name in ("contribution_low_c", "contribution_high_c")]
-        text = " to ".join(shown("contribution_c", float(end), system, unit=False) for end in ends)
-        put(sheet, row, 6, text, cell("@", "right"))
-    else:
-        value = from_si(values(county, "contribution_c", day)[place], "contribution_c", system).item()
-        put(sheet, row, 6, value, cell(shape))
-    for column, name in ((7, "contribution_same_day_c"), (8, "contribution_carried_c")):
-        part = values(county, name, day)[place] if rank > 1 else np.nan
-        put(sheet, row, column, from_si(part, name, system).item(), cell(shape))
 
 
 def _county_headings(sheet: Worksheet, look: Look, system: System, row: int) -> None:
@@ -219,7 +219,7 @@ def _county_headings(sheet: Worksheet, look: Look, system: System, row: int) -> 
         f"of it today's ({degrees})", f"of it carried ({degrees})", "How sure", "Remarks",
     )  # fmt: skip
     for column, heading in enumerate(headings):
-        sheet.write_string(row, column, heading, look.heading(over_text=column in {0, 9, 10}))
+        sheet.write_string(row, column, heading, look.heading(over_text=column in {0, 9, LAST_OF_TABLE}))
     sheet.set_row(row, HEADING_POINTS)
 
 
@@ -251,9 +251,7 @@ def _stand_table(
     sheet.set_row(first_row, HEADING_POINTS)
     end = first_row + 1 + len(order)
     if own.sizes["unit_id"] > len(order):
-        more = (
-            f"The {len(order)} that will be short soonest of {own.sizes['unit_id']}; all are on Stand days."
-        )
+        more = f"The {len(order)} that will be short soonest of {own.sizes['unit_id']}; all are on Stand days."
         sheet.write_string(end, 0, more, look(font_color=SOFT, font_size=8))
         end += 1
     return end

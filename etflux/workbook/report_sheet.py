@@ -145,9 +145,9 @@ def _cells(letter: str, values: np.ndarray, rows: range, styles: list[int]) -> l
         serial = (values.astype("datetime64[D]") - _EXCEL_ZERO).astype(float)
         values = np.where(np.isnat(values), np.nan, serial)
     if values.dtype.kind == "O":
-        made = {text: _inline(text) for text in set(map(clean_text, values))}
+        made = {value: _inline(clean_text(value)) for value in set(values)}
         return [
-            f'<c r="{letter}{row}" s="{style}"{made[clean_text(value)]}'
+            f'<c r="{letter}{row}" s="{style}"{made[value]}'
             for value, row, style in zip(values, rows, styles, strict=True)
         ]
     return [
