@@ -122,9 +122,9 @@ def main(folder: Path = HERE) -> None:
     inside, apart = split_weather(tables)
     for name, rows in apart.items():
         write_weather(rows, folder / name)
-    template.write(folder / f"{BASIN}.xlsx", system="si", tables=inside, settings=settings)
+    template.write(folder / f"{BASIN}.xlsx", system="si", tables=inside, settings=settings, replace=True)
     tables, settings = county_tables()
-    template.write(folder / f"{COUNTY}.xlsx", system="us", tables=tables, settings=settings)
+    template.write(folder / f"{COUNTY}.xlsx", system="us", tables=tables, settings=settings, replace=True)
 
 
 if __name__ == "__main__":

@@ -8,6 +8,7 @@ import json
 from pathlib import Path
 
 import numpy as np
+import openpyxl
 import pandas as pd
 import pytest
 
@@ -81,6 +82,26 @@ def test_weather_file_is_what_the_script_makes(tables, tmp_path):
     for name, rows in apart.items():
         make_examples.write_weather(rows, tmp_path / name)
         assert (tmp_path / name).read_bytes() == (FOLDER / name).read_bytes()
+
+
+@pytest.fixture(scope="module")
+def made(tmp_path_factory):
+    folder = tmp_path_factory.mktemp("examples")
+    make_examples.main(folder)
+    return folder
+
+
+def _cells(path):
+    book = openpyxl.load_workbook(path, read_only=True)
+    return {page.title: [[cell.value for cell in row] for row in page.iter_rows()] for page in book.worksheets}
+
+
+@pytest.mark.parametrize("name", ["harrowbend.xlsx", "tallgrove_us.xlsx"])
+def test_workbooks_are_what_the_script_makes(name, made):
+    again, committed = _cells(made / name), _cells(FOLDER / name)
+    assert list(again) == list(committed)
+    for title, rows in committed.items():
+        assert again[title] == rows, title
 
 
 # --- tables as the package wants them ---
