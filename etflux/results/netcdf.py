@@ -91,6 +91,8 @@ def attributes_of(name: str) -> dict[str, Any]:
         return {"long_name": "Why the day may still move", **_masks("provisional", np.uint8)}
     if name == "flags":
         return {"long_name": "Remarks on the air", **_masks("air", np.int32)}
+    if name == "hour":
+        return {"long_name": "Hour of the day", "units": "hour", "comment": "Local solar time"}
     if name == "stage_code":
         words = " ".join(word.replace(" ", "_") for word in STAGE_WORDS.values())
         values = np.array([int(stage) for stage in STAGE_WORDS], dtype=np.int8)

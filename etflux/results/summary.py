@@ -61,7 +61,7 @@ def values(dataset: xr.Dataset, name: str, day: np.datetime64 | None = None) -> 
     found = dataset if day is None else dataset.sel(date=day)
     if name in found:
         return found[name].to_numpy()
-    dims = [dim for dim in found.dims if dim != "tag"]
+    dims = [dim for dim in ("date", "station_id", "unit_id", "county_id") if dim in found.dims]
     shape = tuple(found.sizes[dim] for dim in dims)
     return np.zeros(shape, int) if name in {"flags", "provisional", "stage_code"} else np.full(shape, np.nan)
 

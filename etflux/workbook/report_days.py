@@ -148,7 +148,7 @@ def stand_columns(results: Results, stand: xr.Dataset, system: System) -> tuple[
     ]  # fmt: skip
     estimated = _county_of(results, stand, "estimated_share_pct")
     marks = marked_words(estimated, _by_id(stand, "provisional"))
-    columns.append(words("Marked", marks, width=28, note="Why the day may still move"))
+    columns.append(words("Marked", marks, width=30, note="Why the day may still move"))
     return columns, marks != ""
 
 
@@ -202,8 +202,8 @@ def county_columns(results: Results, county: xr.Dataset, system: System) -> tupl
     columns += [
         words("Contribution is", np.array(list(CONFIDENCE.values()), dtype=object)[rank], how, width=16),
         words("Why there is no number", missing_reason(flags, contribution), how, width=28),
-        words("Remarks on the air", each(flags, "air"), how, width=48),
         words("Marked", marks, how, "Why the day may still move", width=34),
+        words("Remarks on the air", each(flags, "air"), how, width=64),
     ]
     return columns, marks != ""
 

@@ -23,6 +23,7 @@ ROWS_AT_ONCE = 2000
 PAPER_CHARACTERS = 128.0  # of the ordinary font across a landscape page
 PAGE_CHARACTERS = 206.0  # at the smallest print that is easily read
 BOLD_CHARACTER = 0.95  # width of one in a heading
+SMALL_WIDTH = 11.0  # of most columns on sheets with several short tables
 PADDING = 0.72  # characters that a column needs beyond its width
 EXTRA_DIGITS = 2  # in the cell beyond those shown; the tidy tables have all
 _EXCEL_ZERO = np.datetime64("1899-12-30", "D")
@@ -225,6 +226,7 @@ def _set_page_parts(sheet: TableSheet, columns: Sequence[Column], frozen: int) -
         used += wide
         widest = max(widest, used)
     sheet.repeat_columns(0, frozen - 1)
+    sheet.print_across()  # all of a stretch of days before the next stretch
     sheet.set_print_scale(int(max(40, min(100, 100 * PAPER_CHARACTERS / widest))))
     if breaks:
         sheet.set_v_pagebreaks(breaks)
@@ -289,8 +291,8 @@ def _write_headings(sheet: Worksheet, look: Look, row: int, columns: Sequence[Co
             sheet.write_comment(row, position, column.note, {"x_scale": 1.4, "y_scale": 0.7, "font_size": 9})
         if widths:
             sheet.set_column(position, position, column.width)
-            tallest = max(tallest, _lines(column.heading, column.width))
-    sheet.set_row(row, 12.5 * tallest + 3 if widths else 27)
+        tallest = max(tallest, _lines(column.heading, column.width if widths else SMALL_WIDTH))
+    sheet.set_row(row, 12.5 * tallest + 3)
 
 
 def _lines(text: str, width: float) -> int:

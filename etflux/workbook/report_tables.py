@@ -224,7 +224,7 @@ def _settings(results: Results, sheet: Worksheet, look: Look, row: int, system: 
             continue
         value = results.settings[name]
         changed = value != setting.default
-        text, unit = str(value), setting.unit
+        text, unit = _setting_words(value), setting.unit
         if system == "us" and setting.us_unit and setting.us_unit != setting.unit and isinstance(value, int | float):
             text, unit = f"{convert(value, setting.unit, setting.us_unit).item():.4g}", setting.us_unit
         words_of_value = f"{text} {unit}".strip() or "(blank)"
@@ -243,6 +243,12 @@ def _settings(results: Results, sheet: Worksheet, look: Look, row: int, system: 
         for position, heading in ((1, "Setting"), (2, "Value"), (3, "What it does"), (4, "Source"))
     ]
     _write_wrapped(sheet, look, row, columns, (34, 26, 52, 52))
+
+
+def _setting_words(value: Any) -> str:
+    if isinstance(value, bool):
+        return "yes" if value else "no"
+    return f"{value:g}" if isinstance(value, float) else str(value)
 
 
 def _findings(sheet: Worksheet, look: Look, row: int, findings: Sequence[Any], none: str, last_column: int) -> int:

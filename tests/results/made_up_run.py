@@ -28,7 +28,7 @@ AIR_DAYS = 5
 def _stands(counties, per_county, bare_county):
     rows = []
     for county in range(counties):
-        county_id = f"{17000 + 2 * county + 1:05d}"
+        county_id = f"{99000 + 2 * county + 1:05d}"
         n = 0 if county == bare_county else per_county
         for number in range(n):
             kind = KINDS[(county + number) % len(KINDS)]
@@ -167,7 +167,11 @@ def _county_dataset(rng, stand, units, dates, eto, rain, air):
             "longitude_deg": ("county_id", -93.0 + 0.1 * np.arange(n)),
         },
     )  # fmt: skip
-    return dataset.assign(le_by_tag_w_m2=(("date", "county_id", "tag"), by_tag))
+    by_hour = with_water[..., None] + np.array([-1.0, 0.0, 0.5])
+    return dataset.assign_coords(hour=[12.0, 15.0, 18.0]).assign(
+        le_by_tag_w_m2=(("date", "county_id", "tag"), by_tag),
+        hourly_dew_point_c=(("date", "county_id", "hour"), by_hour),
+    )
 
 
 def _contribution(county):

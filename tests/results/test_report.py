@@ -242,7 +242,7 @@ def test_no_text_becomes_a_formula_or_a_link(make, tmp_path):
     names = pd.DataFrame(
         {
             "kind": ["county", "cover", "station"],
-            "id": ["17001", "corn", "N1"],
+            "id": ["99001", "corn", "N1"],
             "name": [evil, "+1+1", "http://example.org"],
         }
     )
