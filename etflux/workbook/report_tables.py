@@ -35,7 +35,7 @@ MARK_NOTES = {
 WEATHER_TABLES = ("weather", "stations", "rain_gauges", "profiles", "mixing_depths", "wind")
 FINDING_WIDTH = 125
 US_OF = {"mm": "in", "MJ/m²/day": "langley/day", "10⁶ m³": "acre-ft", "m": "ft", "°C": "°F", "km²": "acres"}
-SMALL_WIDTHS = (16, 24, *[11.5] * 10)
+SMALL_WIDTHS = (16, 24, *[12.5] * 10)
 
 
 def title(sheet: Worksheet, look: Look, text: str, sentence: str = "") -> int:
@@ -59,7 +59,7 @@ def growth_stages(results: Results, sheet: TableSheet, look: Look) -> None:
     stand = results.stand
     own = stand["kind"].to_numpy() == "stand"
     marks = results.marks[results.marks["unit_id"].isin(stand["unit_id"].to_numpy()[own])]
-    first = marks.groupby(["unit_id", "mark"])["date"].min().unstack("mark")
+    first = _of_this_season(marks, results.dates)
     basis = marks.groupby("unit_id")["basis"].agg(lambda texts: "; ".join(dict.fromkeys(map(str, texts))))
     units = stand["unit_id"].to_numpy()[own].astype(str)
     covers = results.names_by_id("cover")
@@ -82,8 +82,16 @@ def growth_stages(results: Results, sheet: TableSheet, look: Look) -> None:
                 11.5,
             )
         )
-    columns.append(words("Dates from", basis.reindex(units).fillna("").to_numpy(), width=34))
+    columns.append(words("Dates from", basis.reindex(units).fillna("").to_numpy(), width=48))
     write_table(sheet, look, row, columns, frozen=2)
+
+
+def _of_this_season(marks: pd.DataFrame, days: np.ndarray) -> pd.DataFrame:
+    """Dates by unit and mark; of a mark that comes every year, the one nearest to the middle of the record."""
+    middle = pd.Timestamp(days[len(days) // 2]) if len(days) else pd.Timestamp(0)
+    dated = marks.assign(date=pd.to_datetime(marks["date"]))
+    dated = dated.assign(away=(dated["date"] - middle).abs()).sort_values("away", kind="stable")
+    return dated.drop_duplicates(["unit_id", "mark"]).pivot(index="unit_id", columns="mark", values="date")
 
 
 def stations(results: Results, sheet: Worksheet, look: Look, system: System) -> None:

@@ -307,6 +307,19 @@ def test_closure_names_terms_and_leaves_nothing_over(books):
     )
 
 
+def test_a_mark_of_every_year_is_shown_for_the_year_of_the_record(make, tmp_path):
+    made = make(counties=1, days=60)
+    years = pd.DataFrame(
+        [("S01-2", "greenup", pd.Timestamp(f"{year}-04-05"), "freezes") for year in (2030, 2031, 2032)]
+    )
+    years.columns = made.marks.columns
+    book = _written(dataclasses.replace(made, marks=pd.concat([made.marks, years], ignore_index=True)), tmp_path)
+    sheet = _rows(book["Growth stages"], first="County").set_index("Stand")
+    assert sheet.loc["S01-2", "Green-up"] == dt.datetime(2031, 4, 5)
+    assert sheet.loc["S01-2", "Planting"] == dt.datetime(2031, 4, 19)
+    assert sheet.loc["S01-2", "Dates from"] == "heat units; freezes"
+
+
 def test_stations_say_what_was_filled_and_which_checks_spoke(books):
     _, book = books["si"]
     text = " ".join(_texts(book["Stations"]))
