@@ -1,0 +1,257 @@
+"""A filled workbook, and the CSV files beside it, to a case; everything that is wrong with them, each at its cell."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import replace
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from etflux.case import Case, Settings
+from etflux.findings import Finding
+from etflux.workbook.cells import Book, Limits, open_book
+from etflux.workbook.headings import nearest, plain
+from etflux.workbook.places import Places
+from etflux.workbook.rows import Block, frame, read_sheet
+from etflux.workbook.settings_sheet import read_settings
+from etflux.workbook.sheets import (
+    CHOICES,
+    READ_FIRST,
+    SETTINGS,
+    VERSION,
+    VERSION_LABEL,
+    VERSION_PROPERTY,
+    Sheet,
+    packaged_rows,
+    sheets,
+)  # fmt: skip
+from etflux.workbook.weather_files import Trouble, beside, read_file, sha256
+
+if TYPE_CHECKING:
+    import pandas as pd
+
+    Progress = Callable[[str, float], None]
+
+SUBJECTS = {  # what a row of each table is about
+    "stations": ("station", "station_id"), "weather": ("station", "station_id"), "rain_gauges": ("county", "county_id"),
+    "counties": ("county", "county_id"), "rest": ("county", "county_id"), "soils": ("soil", "soil_id"),
+    "covers": ("cover", "cover_id"), "stands": ("stand", "stand_id"), "irrigation_events": ("stand", "stand_id"),
+    "irrigation_rules": ("rule", "rule_id"), "observations": ("stand", "stand_id"),
+    "mixing_depths": ("county", "county_id"), "profiles": ("site", "site_id"), "wind": ("county", "county_id"),
+}  # fmt: skip
+
+
+def read(
+    path: Path | str, limits: Limits | None = None, progress: Progress | None = None
+) -> tuple[Case | None, list[Finding], Places]:
+    """Read a filled workbook.
+
+    Parameters
+    ----------
+    path : path
+        An .xlsx (or .xlsm) file; it is not changed.
+    limits : Limits, optional
+        Larger ones for larger workbooks.
+    progress : callable, optional
+        Called with what is being read and the share done.
+
+    Returns
+    -------
+    case : Case or None
+        What could be understood, cells with errors blank; None if the file has no sheet of the template. With errors
+        among the findings it serves only for further checks.
+    findings : list of Finding
+        Each with its place.
+    places : Places
+        Where every row of the case stands.
+
+    Raises
+    ------
+    CannotRead
+        If the file is not a workbook that can be read.
+    """
+    path = Path(path)
+    tell = progress or (lambda step, share: None)
+    book = open_book(path, limits)
+    places = Places(titles={sheet.table: sheet.title for sheet in sheets()} | {"settings": SETTINGS})
+    titles, findings = _titles(book)
+    if not titles.keys() - {"settings"}:
+        known = ", ".join(sheet.title for sheet in sheets() if sheet.need == "needed")
+        return None, [Finding("sheets-missing", "workbook", detail=known, place=path.name)], places
+    places.titles |= titles
+    version, said = _version(book)
+    findings += said
+    settings, system, said = Settings(), "", []
+    if "settings" in titles:
+        settings, system, said = read_settings(book, titles["settings"], path.parent, places)
+    findings += said
+    blocks: dict[str, list[Block]] = {}
+    for number, sheet in enumerate(sheets()):
+        if sheet.table in titles:
+            tell(f"reading {titles[sheet.table]}", number / len(sheets()))
+            blocks[sheet.table] = [read_sheet(book, titles[sheet.table], sheet, system)]
+    files, said = _weather_files(blocks, path.parent, system, places)
+    findings += said
+    tell("reading done", 1.0)
+    findings += _missing(blocks, places)
+    tables, said = _tables(blocks, places)
+    findings += said
+    source = {"path": str(path), "sha256": sha256(path), "template_version": version, "weather_files": files}
+    return Case(settings, tables, source), findings, places
+
+
+def _titles(book: Book) -> tuple[dict[str, str], list[Finding]]:
+    """Title in the file of every sheet that is known, by table; notes on the others."""
+    known = {plain(sheet.title): sheet.table for sheet in sheets()} | {plain(SETTINGS): "settings"}
+    found: dict[str, str] = {}
+    others = []
+    for title in book.sheets:
+        table = known.get(plain(title))
+        if table and table not in found:
+            found[table] = title
+        elif plain(title) not in (plain(READ_FIRST), plain(CHOICES)):
+            others.append(title)
+    free = [sheet.title for sheet in sheets() if sheet.table not in found]
+    return found, [
+        Finding("sheet-unknown", "workbook", None, None, title, "", nearest(title, free), title) for title in others
+    ]
+
+
+def _version(book: Book) -> tuple[int | None, list[Finding]]:
+    """Version of the template: the property, or the cell that anyone can see."""
+    said: Any = book.properties.get(VERSION_PROPERTY)
+    title = next((title for title in book.sheets if plain(title) == plain(READ_FIRST)), None)
+    if said is None and title is not None:
+        cells = list(book.cells(title))
+        label = next((cell for cell in cells if plain(cell.value) == plain(VERSION_LABEL)), None)
+        beside_it = [cell.value for cell in cells if label and (cell.row, cell.column) == (label.row, label.column + 1)]
+        said = beside_it[0] if beside_it else None
+    try:
+        version = int(float(said))
+    except (TypeError, ValueError, OverflowError):
+        return None, [Finding("template-version-unknown", "workbook", place=title or READ_FIRST)]
+    if version > VERSION:
+        return version, [Finding("template-version-newer", "workbook", None, None, version, place=title or READ_FIRST)]
+    return version, []
+
+
+def _weather_files(
+    blocks: dict[str, list[Block]], folder: Path, system: str, places: Places
+) -> tuple[dict[str, str], list[Finding]]:
+    """Read every CSV file that stations name, once each; hash of each."""
+    if not blocks.get("stations"):
+        return {}, []
+    station = blocks["stations"][0]
+    named: dict[str, list[int]] = {}
+    for row, name in enumerate(station.columns.get("weather_file", [])):
+        if name:
+            named.setdefault(name, []).append(row)
+    hashes: dict[str, str] = {}
+    for name, at in named.items():
+        path = beside(folder, name)
+        if isinstance(path, Trouble):
+            for row in at:
+                station.say(path.code, row, "weather_file", name, path.detail)
+            continue
+        ids = [station.columns["station_id"][row] for row in at]
+        ids = [station_id for station_id in ids if station_id is not None]
+        if ids:
+            block = read_file(path, name, ids, system)
+            blocks.setdefault("weather", []).append(block)
+            places.files |= dict.fromkeys(ids, name)
+            hashes[name] = sha256(path)
+    return hashes, []
+
+
+def _missing(blocks: dict[str, list[Block]], places: Places) -> list[Finding]:
+    """Needed sheets that are not there, or have no rows."""
+    found = []
+    for sheet in sheets():
+        if sheet.need != "needed":
+            continue
+        read_blocks = blocks.get(sheet.table)
+        if not read_blocks:
+            found.append(Finding("sheet-missing", sheet.table, place=sheet.title))
+        elif not any(block.rows for block in read_blocks) and not any(
+            finding.severity == "error" for block in read_blocks for finding in block.findings
+        ):
+            found.append(Finding("sheet-empty", sheet.table, place=places.titles[sheet.table]))
+    return found
+
+
+def _tables(blocks: dict[str, list[Block]], places: Places) -> tuple[dict[str, pd.DataFrame], list[Finding]]:
+    """Tables of the case, places of their rows, and the findings with the rows counted in the whole table."""
+    import pandas as pd
+
+    tables, findings = {}, []
+    for sheet in sheets():
+        own = blocks.get(sheet.table, [])
+        table = frame(sheet, own)
+        places.rows[sheet.table] = [(block.origin, row) for block in own for row in block.rows]
+        places.origins[sheet.table] = [block.origin for block in own]
+        offset = 0
+        for block in own:
+            for finding in block.findings:
+                row = None if finding.row is None else finding.row + offset
+                subject = "" if row is None else subject_of(sheet.table, table, row)
+                findings.append(replace(finding, row=row, subject=subject))
+            offset += len(block.rows)
+        if sheet.need == "ready":
+            packaged = _packaged(sheet)
+            findings += _changed(sheet, table, packaged)
+            rest = packaged[~packaged[sheet.columns[0].name].isin(table[sheet.columns[0].name])]
+            pieces = [piece for piece in (table, rest) if len(piece)]
+            table = pd.concat(pieces, ignore_index=True) if pieces else packaged
+        tables[sheet.table] = table
+    return tables, [places.placed(finding) for finding in findings]
+
+
+def subject_of(table: str, rows: pd.DataFrame, row: int) -> str:
+    """What a row is about, in words: "station N2, 2031-07-03"."""
+    word, key = SUBJECTS[table]
+    named = rows[key].iloc[row]
+    parts = [f"{word} {named}"] if named is not None else []
+    for name, digits in (("date", 10), ("time", 16)):
+        if name in rows and rows[name].notna().iloc[row]:
+            parts.append(str(rows[name].iloc[row])[:digits])
+    return ", ".join(parts)
+
+
+def _packaged(sheet: Sheet) -> pd.DataFrame:
+    """The package's own rows with the types of a case's table."""
+    import pandas as pd
+
+    rows = packaged_rows(sheet.table)
+    found = {}
+    for column in sheet.columns:
+        words = [row[column.name] or None for row in rows]
+        if column.kind == "number":
+            found[column.name] = np.array([np.nan if word is None else float(word) for word in words])
+        else:
+            found[column.name] = np.array(words, dtype=object)
+    return pd.DataFrame(found)
+
+
+def _changed(sheet: Sheet, table: pd.DataFrame, packaged: pd.DataFrame) -> list[Finding]:
+    """Notes on rows of the package that the workbook has with other values."""
+    key = sheet.columns[0].name
+    known = packaged.drop_duplicates(key).set_index(key)
+    found = []
+    for row, name in enumerate(table[key]):
+        if name not in known.index:
+            continue
+        for column in sheet.columns[1:]:
+            if column.name in ("name", "source"):
+                continue
+            mine, theirs = table[column.name].iloc[row], known.loc[name, column.name]
+            same = (
+                np.isclose(mine, theirs, rtol=1e-6, equal_nan=True) if column.kind == "number" else mine == theirs
+            ) or (mine is None and theirs is None)
+            if not same:
+                detail = f"packaged: {'blank' if theirs is None or theirs != theirs else theirs}"
+                shown = None if mine is None or mine != mine else mine
+                found.append(Finding("packaged-row-changed", sheet.table, row, column.name, shown,
+                                     subject_of(sheet.table, table, row), detail))  # fmt: skip
+    return found
