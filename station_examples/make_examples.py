@@ -108,9 +108,13 @@ def write_outlines(outlines: dict[str, Outline], path: Path) -> None:
 
 
 def write_weather(rows: pd.DataFrame, path: Path) -> None:
-    """Days of one station as a CSV file, columns by their names in the registry."""
+    """Days of one station as a CSV file, under the headings of the Weather sheet."""
+    from etflux.workbook.sheets import sheet_of
+
+    sheet = sheet_of("weather")
     dates = rows["date"].dt.strftime("%Y-%m-%d")
-    rows.assign(date=dates).to_csv(path, index=False, lineterminator="\n")
+    headings = {name: sheet.column(name).heading("si") for name in rows}
+    rows.assign(date=dates).rename(columns=headings).to_csv(path, index=False, lineterminator="\n")
 
 
 def main(folder: Path = HERE) -> None:
