@@ -337,8 +337,7 @@ class _Depth:
     @staticmethod
     def _masses(theta_v: np.ndarray, entrainment: float, supply: np.ndarray, floor: np.ndarray) -> np.ndarray:
         need = column.heat_need(theta_v, entrainment)
-        mass = np.stack([column.mixed_mass(need, supply[:, k]) for k in range(supply.shape[1])], axis=1)
-        return np.maximum(mass, floor[:, None])
+        return np.maximum(column.mixed_mass(need, supply), floor[:, None])
 
     def _with_given(
         self, supply: np.ndarray, given_m: np.ndarray, given_hour: np.ndarray, edges: np.ndarray, floor: np.ndarray

@@ -30,6 +30,8 @@ HOURS = np.arange(25.0)  # edges of the day's hours, local solar time
 # 60 kg m-2 are about 50 m; 45 of them reach about 2.5 km, the wider ones above end near 5.6 km.
 LAYER_MASS = np.concatenate([np.full(45, 60.0), np.full(8, 320.0)])
 EDGES = np.concatenate([[0.0], np.cumsum(LAYER_MASS)])
+NEWTON_STEPS = 60
+MASS_PRECISION = 1e-10  # kg m-2
 
 
 def virtual_theta(theta_k: ArrayLike, q_kg_kg: ArrayLike) -> np.ndarray:
@@ -95,35 +97,40 @@ class HeatNeed(NamedTuple):
 
     Attributes
     ----------
-    need, gap : ndarray, shape (county, layer + 1)
-        Supply that is needed with entrainment, and without (G). [K kg m-2]
+    edge : ndarray, shape (layer + 1,)
+        Mass between the ground and each edge. [kg m-2]
+    need : ndarray, shape (county, layer + 1)
+        Supply that is needed to reach each edge. [K kg m-2]
+    gap : ndarray, shape (county, layer)
+        Supply that is needed without entrainment (G), at the bottom of each layer. [K kg m-2]
     slope : ndarray, shape (county, layer)
         Gradient of virtual potential temperature. [K kg-1 m2]
-    power : float
-        1/A; infinite for no entrainment.
+    entrainment : ndarray, shape (county,)
     """
 
+    edge: np.ndarray
     need: np.ndarray
     gap: np.ndarray
     slope: np.ndarray
-    power: float
+    entrainment: np.ndarray
 
 
-def heat_need(theta_v_k: np.ndarray, entrainment: float, mass: ArrayLike = LAYER_MASS) -> HeatNeed:
+def heat_need(theta_v_k: np.ndarray, entrainment: ArrayLike, mass: ArrayLike = LAYER_MASS) -> HeatNeed:
     """Heat supply that mixes a profile to each edge, an exact one-pass integral over the layers.
 
     With G(M) the integral of theta_v(M) - theta_v below M, and the flux at the top A times that at the ground,
 
         F_need(M) = M^(-1/A) * integral from 0 to M of G(m) d(m^(1/A)).
 
-    Potential temperature is taken as linear within a layer between values at the edges.
+    Within a layer potential temperature is linear about the layer's mean, so that the heat of a layer is kept; between
+    layers it may jump.
 
     Parameters
     ----------
     theta_v_k : ndarray, shape (county, layer)
         Virtual potential temperature of the morning, layer means, not falling with height. [K]
-    entrainment : float
-        A, 0 to 0.4.
+    entrainment : array_like, scalar or shape (county,)
+        A, 0 to 0.4; with 0 the need is G.
     mass : array_like, shape (layer,)
         [kg m-2]
 
@@ -146,73 +153,84 @@ def heat_need(theta_v_k: np.ndarray, entrainment: float, mass: ArrayLike = LAYER
     """
     dm = np.asarray(mass, float)
     edge = np.concatenate([[0.0], np.cumsum(dm)])
-    at_edge = _edge_values(theta_v_k, dm)
-    slope = np.diff(at_edge, axis=1) / dm
-    gap = np.concatenate(
-        [np.zeros((len(slope), 1)), np.cumsum(0.5 * slope * np.diff(edge**2), axis=1)], axis=1
-    )  # integral of m dtheta
-    if entrainment <= 0.0:
-        return HeatNeed(np.maximum.accumulate(gap, axis=1), gap, slope, np.inf)
-    power = 1.0 / entrainment
-    need = np.zeros_like(gap)
+    share = np.broadcast_to(np.asarray(entrainment, float), len(theta_v_k))
+    slope = _slopes(theta_v_k, dm)
+    above_first = theta_v_k - theta_v_k[:, :1]
+    heat_below = np.cumsum(above_first * dm, axis=1) - above_first * dm
+    gap = edge[:-1] * (above_first - 0.5 * slope * dm) - heat_below
+    need = np.zeros((len(slope), len(edge)))
     for k in range(len(dm)):
-        need[:, k + 1] = _need_within(edge[k], edge[k + 1], need[:, k], gap[:, k], slope[:, k], power)
-    return HeatNeed(np.maximum.accumulate(need, axis=1), gap, slope, power)
+        need[:, k + 1] = _need_within(edge[k], edge[k + 1], need[:, k], gap[:, k], slope[:, k], share)
+    return HeatNeed(edge, np.maximum.accumulate(need, axis=1), gap, slope, share)
+
+
+def _slopes(values: np.ndarray, dm: np.ndarray) -> np.ndarray:
+    """Gradient within each layer: the smaller of those to its two neighbours, so that no jump is downward."""
+    between = np.diff(values, axis=1) / (0.5 * (dm[1:] + dm[:-1]))
+    return np.minimum(
+        np.concatenate([between[:, :1], between], axis=1), np.concatenate([between, between[:, -1:]], axis=1)
+    )
 
 
 def _need_within(
-    below: ArrayLike, mass: ArrayLike, need: np.ndarray, gap: np.ndarray, slope: np.ndarray, power: float
+    below: ArrayLike, mass: ArrayLike, need: np.ndarray, gap: np.ndarray, slope: np.ndarray, entrainment: np.ndarray
 ) -> np.ndarray:
     """Heat need at `mass` inside the layer that starts at `below`."""
-    a, m = np.asarray(below, float), np.asarray(mass, float)
-    base = gap - 0.5 * slope * a**2
-    if np.isinf(power):
-        return base + 0.5 * slope * m**2
+    a, m = np.asarray(below, float), np.maximum(mass, 1e-12)
+    power = 1.0 / np.maximum(entrainment, 1e-9)
     shrink = (a / m) ** power
-    return shrink * need + base * (1.0 - shrink) + 0.5 * slope * power / (power + 2.0) * (m**2 - a**2 * shrink)
+    base = gap - 0.5 * slope * a**2
+    return shrink * need + base * (1.0 - shrink) + 0.5 * slope / (1.0 + 2.0 * entrainment) * (m**2 - a**2 * shrink)
 
 
-def _edge_values(values: np.ndarray, dm: np.ndarray) -> np.ndarray:
-    """Values at the edges of layers, linear between the layers' middles and continued at both ends."""
-    weight = dm[:-1] / (dm[:-1] + dm[1:])
-    inner = values[:, :-1] + weight * np.diff(values, axis=1)
-    low, high = 2.0 * values[:, :1] - inner[:, :1], 2.0 * values[:, -1:] - inner[:, -1:]
-    return np.concatenate([low, inner, high], axis=1)
-
-
-def mixed_mass(found: HeatNeed, supply: np.ndarray, mass: ArrayLike = LAYER_MASS) -> np.ndarray:
+def mixed_mass(found: HeatNeed, supply: np.ndarray) -> np.ndarray:
     """Mass of air that a heat supply mixes.
 
     Parameters
     ----------
     found : HeatNeed
-    supply : ndarray, shape (county,)
+    supply : ndarray, shape (county, hour)
         Heat since the morning, F; 0 or less mixes nothing. [K kg m-2]
-    mass : array_like, shape (layer,)
-        [kg m-2]
 
     Returns
     -------
-    ndarray, shape (county,)
-        At most the top of the layers; NaN where the supply is. [kg m-2]
+    ndarray, shape (county, hour)
+        At most the top of the layers; NaN where the supply or the profile is. [kg m-2]
     """
-    edge = np.concatenate([[0.0], np.cumsum(np.asarray(mass, float))])
+    edge, need = found.edge, found.need
     wanted = np.maximum(supply, 0.0)
-    upper = np.clip((found.need < wanted[:, None]).sum(axis=1), 1, len(edge) - 1)
-    row = np.arange(len(supply))
-    low, high = edge[upper - 1].copy(), edge[upper].copy()
-    a, need, gap, slope = (
-        edge[upper - 1],
-        found.need[row, upper - 1],
-        found.gap[row, upper - 1],
-        found.slope[row, upper - 1],
-    )
-    for _ in range(50):  # halving: 60 kg m-2 / 2^50 is rounding
-        middle = 0.5 * (low + high)
-        above = _need_within(a, middle, need, gap, slope, found.power) >= wanted
-        low, high = np.where(above, low, middle), np.where(above, middle, high)
-    mixed = np.where(wanted >= found.need[:, -1], edge[-1], 0.5 * (low + high))
-    return np.where(np.isnan(supply), np.nan, np.where(wanted > 0.0, mixed, 0.0))
+    upper = np.clip((need[:, None, :] < wanted[:, :, None]).sum(axis=2), 1, len(edge) - 1)
+    start, end = edge[upper - 1], edge[upper]
+    need_below = np.take_along_axis(need, upper - 1, axis=1)
+    need_above = np.take_along_axis(need, upper, axis=1)
+    gap, slope = (np.take_along_axis(values, upper - 1, axis=1) for values in (found.gap, found.slope))
+    share = found.entrainment[:, None]
+    with np.errstate(invalid="ignore", divide="ignore"):
+        guess = (wanted - need_below) / (need_above - need_below)
+    low, high = start.copy(), end.copy()
+    middle = start + np.where(need_above > need_below, np.clip(guess, 0.0, 1.0), 0.5) * (end - start)
+    for _ in range(NEWTON_STEPS):  # kept between two bounds that close in
+        over = _need_within(start, middle, need_below, gap, slope, share) - wanted
+        low, high = np.where(over < 0.0, middle, low), np.where(over < 0.0, high, middle)
+        rate = _need_rate(start, middle, over + wanted, gap, slope, share)
+        with np.errstate(invalid="ignore", divide="ignore"):
+            stepped = middle - over / rate
+        inside = (stepped > low) & (stepped < high)
+        before, middle = middle, np.where(inside, stepped, 0.5 * (low + high))
+        if np.nanmax(np.abs(middle - before), initial=0.0) < MASS_PRECISION:
+            break
+    mixed = np.where(wanted >= need[:, -1:], edge[-1], middle)
+    mixed = np.where(wanted > 0.0, mixed, 0.0)
+    return np.where(np.isnan(supply) | np.isnan(need[:, -1:]), np.nan, mixed)
+
+
+def _need_rate(
+    below: np.ndarray, mass: np.ndarray, need: np.ndarray, gap: np.ndarray, slope: np.ndarray, entrainment: np.ndarray
+) -> np.ndarray:
+    """Derivative of the heat need by mass: the jump over A, or without entrainment the slope times the mass."""
+    gap_here = gap + 0.5 * slope * (mass**2 - below**2)
+    with np.errstate(invalid="ignore", divide="ignore"):
+        return np.where(entrainment > 0.0, (gap_here - need) / (entrainment * mass), slope * mass)
 
 
 def mixing_weights(mixed: np.ndarray, edges: ArrayLike = EDGES) -> np.ndarray:
@@ -233,22 +251,22 @@ def mix(
     added : ndarray, shape (county, tracer)
         What entered at the ground: water as kg m-2, heat as K kg m-2.
     mixed : ndarray, shape (county,)
-        Mass of the mixed air, above 0. [kg m-2]
+        Mass of the mixed air; a column with 0 is left as it is and must have nothing added. [kg m-2]
     edges : array_like, shape (layer + 1,)
         [kg m-2]
 
     Returns
     -------
     value : ndarray, shape (county, tracer)
-        In the mixed air.
+        In the mixed air; NaN where there is none.
     after : ndarray, shape (county, layer, tracer)
         Layer means; the layer that holds the top is mixed in its lower part only.
     """
     weight = mixing_weights(mixed, edges)
     total = np.matmul(weight[:, None, :], tracers)[:, 0, :] + added
-    value = total / mixed[:, None]
+    value = total / np.where(mixed > 0.0, mixed, np.nan)[:, None]
     share = (weight / np.diff(np.asarray(edges, float)))[:, :, None]
-    return value, tracers + share * (value[:, None, :] - tracers)
+    return value, np.where(share > 0.0, tracers + share * (value[:, None, :] - tracers), tracers)
 
 
 class Heat(NamedTuple):

@@ -13,7 +13,6 @@ import numpy as np
 
 from etflux import humidity, solar
 from etflux.column import EDGES, LAYER_MASS, saturation_humidity, virtual_theta
-from etflux.findings import Finding
 from etflux.humidity import FREEZING_K, GAS_CONSTANT_DRY, GRAVITY, KAPPA
 from etflux.variables import flag_bits
 from etflux.weather import great_circle_km
@@ -21,21 +20,17 @@ from etflux.weather import great_circle_km
 if TYPE_CHECKING:
     import pandas as pd
 
-    from etflux.case import Case, Settings
+    from etflux.case import Settings
 
 LATEST_AFTER_SUNRISE_H = 3.0
 LEAST_GRADIENT_K_KM = 3.0
 LEAST_LEVELS = 5
-LEAST_TOP_M = 1500.0
-STEEPEST_FALL_K_KM = 12.0  # temperature: beyond it a level is doubtful, dry adiabatic is 9.8
 AIR = flag_bits("air")
-# Hours beyond this that the launch and the local day may differ are a wrong zone.
-EARLIEST_SOLAR_H = 0.0
 
 
 @dataclass(frozen=True)
 class SiteProfile:
-    """One morning profile on the column's layers."""
+    """One morning profile on the column's layers; potential temperature refers to the pressure at its own ground."""
 
     site_id: str
     latitude_deg: float
@@ -45,6 +40,7 @@ class SiteProfile:
     theta_k: np.ndarray
     q_kg_kg: np.ndarray
     flags: int
+    ground_kpa: float
 
 
 @dataclass(frozen=True)
@@ -70,30 +66,34 @@ def site_profiles(profiles: pd.DataFrame) -> list[SiteProfile]:
     -------
     list of SiteProfile
         Profiles later than 3 h after sunrise or before local midnight are left out, as are those with too few levels
-        (:func:`check` says so).
+        (``air_checks`` says so).
     """
-    found = []
-    for (site_id, time), rows in _groups(profiles):
-        site = _place(rows)
+    found: dict[tuple[str, np.datetime64], SiteProfile] = {}
+    for (site_id, time), rows in groups(profiles):
+        site = place(rows)
         if site is None:
             continue
         latitude, longitude = site
         date, hour = local_solar(time, longitude)
-        levels = _levels(rows)
-        if len(levels) < LEAST_LEVELS or not _is_morning(date, hour, latitude):
+        levels, ground_kpa = _levels(rows)
+        if len(levels) < LEAST_LEVELS or not is_morning(date, hour, latitude):
             continue
         theta, q, flags = _on_layers(levels)
-        found.append(SiteProfile(str(site_id), latitude, longitude, date, hour, theta, q, flags))
-    return found
+        # Times are sorted: the later of two profiles of one morning stays.
+        found[str(site_id), date] = SiteProfile(
+            str(site_id), latitude, longitude, date, hour, theta, q, flags, ground_kpa
+        )
+    return list(found.values())
 
 
-def _groups(profiles: pd.DataFrame) -> Any:
+def groups(profiles: pd.DataFrame) -> Any:
+    """Rows of each profile, with its site and time."""
     if not len(profiles):
         return []
     return profiles.groupby(["site_id", "time"], sort=True)
 
 
-def _place(rows: pd.DataFrame) -> tuple[float, float] | None:
+def place(rows: pd.DataFrame) -> tuple[float, float] | None:
     """Latitude and longitude of a profile: the first that its rows give."""
     known = rows[["latitude_deg", "longitude_deg"]].dropna() if "latitude_deg" in rows else rows.iloc[:0]
     return (float(known.iloc[0, 0]), float(known.iloc[0, 1])) if len(known) else None
@@ -109,13 +109,14 @@ def local_solar(time: Any, longitude_deg: float) -> tuple[np.datetime64, float]:
     return date + np.timedelta64(shift, "D"), hour - 24.0 * shift
 
 
-def _is_morning(date: np.datetime64, hour: float, latitude_deg: float) -> bool:
+def is_morning(date: np.datetime64, hour: float, latitude_deg: float) -> bool:
+    """Whether a profile of this local solar hour, counted from midnight, can start a day."""
     sunrise, _ = solar.sunrise_sunset(latitude_deg, solar.day_of_year(date))
-    return EARLIEST_SOLAR_H <= hour <= float(sunrise) + LATEST_AFTER_SUNRISE_H
+    return hour <= float(sunrise) + LATEST_AFTER_SUNRISE_H
 
 
-def _levels(rows: pd.DataFrame) -> np.ndarray:
-    """Mass above the ground, potential temperature and humidity of each level, rising; shape (level, 3)."""
+def _levels(rows: pd.DataFrame) -> tuple[np.ndarray, float]:
+    """Mass above the ground, potential temperature and humidity of each level, rising, (level, 3); ground pressure."""
 
     def column(name: str) -> np.ndarray:
         return rows[name].to_numpy(float) if name in rows else np.full(len(rows), np.nan)
@@ -128,7 +129,7 @@ def _levels(rows: pd.DataFrame) -> np.ndarray:
     order = np.argsort(height if by_height else -pressure, kind="stable")
     good = order[np.isfinite((height if by_height else pressure)[order] + t[order] + e[order])]
     if len(good) < 2:
-        return np.empty((0, 3))
+        return np.empty((0, 3)), np.nan
     t, e, height, pressure = t[good], e[good], height[good], pressure[good]
     if by_height:
         elevation = float(np.nan_to_num(column("elevation_m")[0]))
@@ -138,7 +139,8 @@ def _levels(rows: pd.DataFrame) -> np.ndarray:
     t, e, pressure = t[keep], e[keep], pressure[keep]
     q = humidity.specific_humidity(e, pressure)
     theta = (t + FREEZING_K) * (pressure[0] / pressure) ** KAPPA
-    return np.stack([(pressure[0] - pressure) * 1000.0 / GRAVITY, theta, q], axis=1)
+    mass = (pressure[0] - pressure) * 1000.0 / GRAVITY
+    return np.stack([mass, theta, q], axis=1), float(pressure[0])
 
 
 def _pressures(height: np.ndarray, t_c: np.ndarray, e_kpa: np.ndarray, ground_kpa: float) -> np.ndarray:
@@ -189,9 +191,10 @@ def _on_layers(levels: np.ndarray) -> tuple[np.ndarray, np.ndarray, int]:
 
 def _extended(mass: np.ndarray, theta: np.ndarray, q: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     """Continue a profile above its top with its last stable gradient, at least 3 K/km; humidity halves upwards."""
-    per_mass = LEAST_GRADIENT_K_KM / 1000.0 / 1.0  # about 1 kg m-3 up there
-    last = (theta[-1] - theta[-2]) / (mass[-1] - mass[-2])
-    gradient = max(last, per_mass)
+    least = LEAST_GRADIENT_K_KM / 1000.0  # per kg m-2: about 1 kg m-3 up there
+    gradients = np.diff(theta) / np.diff(mass)
+    stable = gradients[gradients > 0.0]
+    gradient = max(stable[-1], least) if len(stable) else least
     above = np.linspace(mass[-1], EDGES[-1] + 1.0, 12)[1:]
     return (
         np.append(mass, above),
@@ -329,7 +332,9 @@ def blend(
         weight = np.where(km <= within_km, 1.0 / np.maximum(km, 1.0), 0.0)
         near = weight.sum(axis=1) > 0.0
         weight = weight[near] / weight[near].sum(axis=1, keepdims=True)
-        theta[near] = weight @ np.stack([site.theta_k for site in sites])
+        # The same air over higher ground: potential temperature referred to the county's own pressure.
+        referred = (pressure_kpa[near, None] / np.array([site.ground_kpa for site in sites])) ** KAPPA
+        theta[near] = (weight * referred) @ np.stack([site.theta_k for site in sites])
         q[near] = weight @ np.stack([site.q_kg_kg for site in sites])
         start[near] = np.maximum(start[near], weight @ np.array([site.solar_hour for site in sites]))
         of_sites = np.array([site.flags for site in sites])
@@ -338,74 +343,3 @@ def blend(
     limit = saturation_humidity(theta[:, 0], pressure_kpa)
     q[:, 0] = np.minimum(q[:, 0], limit)
     return Morning(theta, q, start, flags, distance)
-
-
-def check(case: Case) -> list[Finding]:
-    """Findings on profiles and mixing depths."""
-    found: list[Finding] = []
-    profiles = case.table("profiles")
-    for (site_id, time), rows in _groups(profiles):
-        found += _check_profile(str(site_id), time, rows)
-    depths = case.table("mixing_depths")
-    floor = case.settings.depth_floor_m
-    for row, depth in enumerate(depths["mixing_depth_m"].to_numpy(float) if len(depths) else ()):
-        if depth < floor:
-            about = f"county {depths['county_id'].iloc[row]}"
-            found.append(
-                Finding("depth-below-floor", "mixing_depths", row, "mixing_depth_m", float(depth), about,
-                        f"the floor is {floor:g} m")
-            )  # fmt: skip
-    return found
-
-
-def _check_profile(site_id: str, time: Any, rows: pd.DataFrame) -> list[Finding]:
-    about = f"site {site_id}, {str(time)[:16]} UTC"
-    first = int(rows.index[0])
-
-    def at(code: str, name: str, mask: np.ndarray, detail: str = "") -> list[Finding]:
-        return [
-            Finding(code, "profiles", int(rows.index[k]), name, float(rows[name].iloc[k]), about, detail)
-            for k in np.flatnonzero(mask)
-        ]
-
-    def column(name: str) -> np.ndarray:
-        return rows[name].to_numpy(float) if name in rows else np.full(len(rows), np.nan)
-
-    t, td, height, pressure = (column(name) for name in ("temperature_c", "dew_point_c", "height_m", "pressure_kpa"))
-    rh = column("rh_mean_pct")
-    found = []
-    place = _place(rows)
-    if place is None:
-        found.append(Finding("profile-place", "profiles", first, "latitude_deg", None, about))
-    else:
-        date, hour = local_solar(time, place[1])
-        if not _is_morning(date, hour, place[0]):
-            detail = f"{hour:.1f} h local solar time"
-            found.append(Finding("profile-hour", "profiles", first, "time", str(time)[:16], about, detail))
-    if not (np.isfinite(height) | np.isfinite(pressure)).all():
-        found += at("profile-level", "temperature_c", ~(np.isfinite(height) | np.isfinite(pressure)))
-    if not (np.isfinite(td) | np.isfinite(rh)).all():
-        found += at("profile-humidity", "temperature_c", ~(np.isfinite(td) | np.isfinite(rh)))
-    found += at("profile-dew-point", "dew_point_c", td > t + 0.05)
-    rising = np.isfinite(height).sum() >= np.isfinite(pressure).sum()
-    upward = np.diff(height if rising else -pressure, prepend=-np.inf) if len(rows) else np.empty(0)
-    name = "height_m" if rising else "pressure_kpa"
-    found += at("profile-not-rising", name, upward <= 0.0)
-    if len(rows) < LEAST_LEVELS or (rising and np.nanmax(height, initial=0.0) < LEAST_TOP_M):
-        found.append(Finding("profile-short", "profiles", first, "site_id", site_id, about, f"{len(rows)} levels"))
-    if rising and np.isfinite(height).any() and np.nanmin(height) > 60.0:
-        found.append(Finding("profile-above-sea", "profiles", first, "height_m", float(np.nanmin(height)), about))
-    if np.isfinite(pressure).any() and (np.nanmax(pressure) < 60.0):
-        found.append(
-            Finding("profile-pressure-unit", "profiles", first, "pressure_kpa", float(np.nanmax(pressure)), about)
-        )
-    if np.nanmax(t, initial=-99.0) > 48.0:
-        found.append(
-            Finding("profile-temperature-unit", "profiles", first, "temperature_c", float(np.nanmax(t)), about)
-        )
-    elif rising and len(rows) > 1:
-        with np.errstate(invalid="ignore", divide="ignore"):
-            fall = -np.diff(t) / np.diff(height) * 1000.0
-        steep = np.concatenate([[False], (fall > STEEPEST_FALL_K_KM) & (np.diff(height) > 50.0)])
-        found += at("profile-unstable", "temperature_c", steep)
-    return found
