@@ -1,0 +1,11 @@
+"""Stands and the rest of each county as units of the water balance, with everything they need resolved.
+
+A unit is a stand, or a third of one (planting spread), or a part of a county's rest. Rows are sorted by county. From
+here on the science takes plain arrays, one value per unit.
+"""
+
+from etflux.stands.problems import check
+from etflux.stands.tables import complete, packaged
+from etflux.stands.units import SPREAD, expand
+
+__all__ = ["SPREAD", "check", "complete", "expand", "packaged"]
