@@ -99,7 +99,8 @@ def _seasons(
         mine = (entered >= january) & (entered < next_january)
         greenup = np.where(mine, entered, at["greenup"][station])
         season = {"greenup": greenup, "freeze": at["freeze"][station], "end": at["end"][station]}
-        season = {name: np.where(seasonal, days, np.nan) for name, days in season.items()}
+        here = seasonal & ~(season["end"] < 0.0)  # not over before the record starts
+        season = {name: np.where(here, days, np.nan) for name, days in season.items()}
         season["settled"] = mine | (at["settled"] | at["defaulted"])[station]
         years.append(season)
         default = np.where(at["defaulted"][station], "mean green-up of the latitude, a default", "freezes")
