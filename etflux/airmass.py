@@ -194,6 +194,7 @@ def _one_day(
     julian = float(solar.day_of_year(inputs.dates[day : day + 1])[0])
     sunrise, sunset = solar.sunrise_sunset(inputs.latitude_deg, julian)
     morning, t_max_mean = _morning(inputs, settings, day, before, pressure, sunrise)
+    background = np.minimum(background, settings.background_share * morning.q_kg_kg)
     tracers, replaced = _start_tracers(inputs, morning, before, background, ledger)
 
     water = inputs.water_mm[day]
@@ -213,16 +214,16 @@ def _one_day(
 
     depth = _Depth(morning, pressure, settings, supply, inputs.given_depth_m[day], inputs.given_hour[day])
     found = _hours(inputs, settings, day, pressure, morning, tracers, depth, wet_share, wet_after, warmth, sunset)
-    available = np.maximum(heat.available, 0.0).sum(axis=1)
     found |= {
-        "available_energy_mj_m2_d": available,
+        "available_energy_mj_m2_d": heat.available.sum(axis=1),
         "sensible_heat_mj_m2_d": used.sum(axis=1),
         "heat_elsewhere_mj_m2_d": (used - own).sum(axis=1),
         "replaced_share": replaced,
         "profile_distance_km": morning.distance_km,
     }
     short = shared.sum(axis=1) < 0.0
-    _flags(inputs, settings, day, found, morning, depth, short, available)
+    _flags(inputs, settings, day, found, morning, depth, short)
+    _no_mixed_air(found, (found["flags"] & AIR["saturated"]) > 0)
     _blank(found, (found["flags"] & (AIR["saturated"] | AIR["energy_short"] | AIR["tags_above_humidity"])) > 0)
 
     evening = _evening(inputs, settings, day, tracers, depth, wet_share[:, -1], wet_after[:, -1], background, ledger)
@@ -475,7 +476,7 @@ def _differ(found: dict[str, np.ndarray]) -> np.ndarray:
 
 def _flags(
     inputs: AirInputs, settings: Settings, day: int, found: dict[str, np.ndarray], morning: Morning, depth: _Depth,
-    short: np.ndarray, available: np.ndarray,
+    short: np.ndarray,
 ) -> None:  # fmt: skip
     """Write the forecaster's flags into `found`."""
     hour = round(settings.contribution_hour)
@@ -509,6 +510,12 @@ def _flags(
     for name, holds in conditions.items():
         flags = flags | np.where(holds, AIR[name], 0)
     found["flags"] = flags
+
+
+def _no_mixed_air(found: dict[str, np.ndarray], saturated: np.ndarray) -> None:
+    """Mixed air that would be saturated is no mixed air: its humidity is no number either."""
+    for name in ("dew_point_mixed_c", "humidity_mixed_g_kg", "lcl_m"):
+        found[name] = np.where(saturated, np.nan, found[name])
 
 
 def _blank(found: dict[str, np.ndarray], blank: np.ndarray) -> None:

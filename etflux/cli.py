@@ -75,12 +75,12 @@ def run(
     quiet: Annotated[bool, typer.Option("-q", "--quiet", help="Print nothing unless something is wrong.")] = False,
 ) -> None:
     """Compute crop water use and its moisture in the air, and write the brief and the tables."""
-    from etflux.workbook.job import run_workbook, summary_text
+    from etflux.workbook.job import results_folder, run_workbook, summary_text
 
     with _progress(quiet) as progress:
         results = run_workbook(file, output=output, on=on, progress=progress)
     if not quiet:
-        print(summary_text(results))
+        print(summary_text(results, on=on, folder=results_folder(file, output)))
 
 
 class _progress:  # noqa: N801 - reads as a statement: with _progress(quiet) as progress
