@@ -102,7 +102,7 @@ def test_workbooks_are_what_the_script_makes(name, made):
     again, committed = _cells(made / name), _cells(FOLDER / name)
     assert list(again) == list(committed)
     for title, rows in committed.items():
-        assert again[title] == rows, title
+        assert again[title] == rows, f"{title}: run station_examples/make_examples.py again"
 
 
 @pytest.mark.parametrize(("name", "which"), [("harrowbend.xlsx", "basin"), ("tallgrove_us.xlsx", "county")])
