@@ -222,7 +222,7 @@ def _one_day(
         "profile_distance_km": morning.distance_km,
     }
     short = shared.sum(axis=1) < 0.0
-    _flags(inputs, settings, day, found, morning, depth, short)
+    _flags(inputs, settings, day, found, morning, depth, short, background[:, 0])
     _no_mixed_air(found, (found["flags"] & AIR["saturated"]) > 0)
     _blank(found, (found["flags"] & (AIR["saturated"] | AIR["energy_short"] | AIR["tags_above_humidity"])) > 0)
 
@@ -476,7 +476,7 @@ def _differ(found: dict[str, np.ndarray]) -> np.ndarray:
 
 def _flags(
     inputs: AirInputs, settings: Settings, day: int, found: dict[str, np.ndarray], morning: Morning, depth: _Depth,
-    short: np.ndarray,
+    short: np.ndarray, background: np.ndarray,
 ) -> None:  # fmt: skip
     """Write the forecaster's flags into `found`."""
     hour = round(settings.contribution_hour)
@@ -486,9 +486,6 @@ def _flags(
     q = found["humidity_mixed_g_kg"] / 1000.0
     saturated = q > column.saturation_humidity(found["theta_mixed_c"] + FREEZING_K, pressure)
     all_tags = np.nansum(found["tag_contribution_g_kg"], axis=(1, 2)) / 1000.0
-    background = humidity.specific_humidity(
-        humidity.vapour_pressure_from_dew_point(settings.background_dew_point_c), pressure
-    )
     conditions = {
         "cumulus": found["lcl_m"] < found["mixing_depth_m"],
         "depth_floor": depth.water[:, hour] <= depth.on_floor_mass * (1.0 + 1e-9),
