@@ -5,7 +5,8 @@ No check needs a file. Each finding names table, row and quantity; the reader of
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Set
+from dataclasses import replace
 from difflib import get_close_matches
 from typing import TYPE_CHECKING, Any
 
@@ -13,7 +14,7 @@ import numpy as np
 
 from etflux import air_checks, canopy, stands, weather
 from etflux.case import TABLES
-from etflux.findings import Finding
+from etflux.findings import Finding, has_errors
 from etflux.irrigation import rule_problems
 from etflux.soilwater import soil_problems
 from etflux.variables import quantities
@@ -22,8 +23,12 @@ if TYPE_CHECKING:
     import pandas as pd
 
     from etflux.case import Case
+    from etflux.weather import StationRecord
+
+Unread = Set[tuple[str, int | None, str | None]]
 
 FAR_KM = 300.0
+WITHOUT = "station-without-weather"
 HOURS_APART = 6.0  # clocks and longitude; political time zones stray 3 hours at most
 # Whose ids a column names.
 REFERENCES: tuple[tuple[str, str, str], ...] = (
@@ -38,7 +43,7 @@ KEYS = {
     "stations": "station_id", "counties": "county_id", "stands": "stand_id", "soils": "soil_id", "covers": "cover_id",
     "irrigation_rules": "rule_id",
 }  # fmt: skip
-MISSED = ("stations", "counties", "stands")  # without rows they are missed as a whole
+NEEDED = ("stations", "counties", "stands")  # without rows they are missed as a whole
 # What a cover of each habit cannot do without; the annual ones' lengths also serve where heat units are not known.
 OF_ALL_COVERS = (
     "cutting", "frost_kill", "adjust_climate", "kcb_ini", "kcb_mid", "kcb_end", "kcb_end_dry", "kcb_dormant",
@@ -55,13 +60,15 @@ RANGED_ELSEWHERE = {("wind", "wind_from_deg"), ("mixing_depths", "hour")}
 DATED = ("rain_gauges", "irrigation_events", "observations", "mixing_depths", "wind")
 
 
-def case_findings(case: Case) -> list[Finding]:
+def case_findings(case: Case, unread: Unread = frozenset()) -> list[Finding]:
     """Everything that can be said about a case before it is run.
 
     Parameters
     ----------
     case : Case
         With or without errors; values that could not be read are missing.
+    unread : set of (table, row, quantity)
+        What has an error already (row None: a whole column); nothing is said that only follows from it.
 
     Returns
     -------
@@ -70,11 +77,46 @@ def case_findings(case: Case) -> list[Finding]:
     """
     found = [
         *_twice(case), *_unknown(case), *_ranges(case), *_covers(case), *_where(case), *_without_stands(case),
-        *soil_problems(case.table("soils")), *rule_problems(case.table("irrigation_rules")), *_irrigation(case),
-        *stands.check(case), *canopy.check(case), *air_checks.check(case),
+        *soil_problems(case.table("soils")), *rule_problems(case.table("irrigation_rules")),
+        *_irrigation(case, unread), *stands.check(case), *canopy.check(case), *air_checks.check(case),
     ]  # fmt: skip
-    record = weather.arrange(case)
-    return [*found, *_season(case, record.dates), *weather.quality(record)]
+    if len(case.table("weather")) and len(case.table("stations")):
+        record = weather.arrange(_on_the_globe(case))
+        found += [*_season(case, record.dates), *_of_weather(case, record)]
+        if not unread and not has_errors(found):
+            found += _gaps(case, record, {finding.subject for finding in found if finding.code == WITHOUT})
+    return [finding for finding in found if (finding.table, finding.row, finding.quantity) not in unread]
+
+
+def _on_the_globe(case: Case) -> Case:
+    """Return the case with impossible latitudes blank: nothing can be said of the sun there."""
+    station, limits = case.table("stations"), quantities()["latitude_deg"]
+    latitude = station["latitude_deg"].astype(float)
+    station = station.assign(latitude_deg=latitude.where(latitude.between(limits.low, limits.high)))
+    return replace(case, tables={**case.tables, "stations": station})
+
+
+def _of_weather(case: Case, record: StationRecord) -> list[Finding]:
+    """What the record says of itself, with the station's row; missing days only where every row found its place."""
+    station, days = case.table("stations"), case.table("weather")
+    ids = _texts(station, "station_id").tolist()
+    placed = days["date"].notna().all() and _texts(days, "station_id").isin(ids).all() and "" not in ids
+    found = []
+    for finding in weather.quality(record):
+        if finding.code == WITHOUT:
+            finding = replace(finding, row=ids.index(finding.value) if finding.value in ids else None)
+        if placed or finding.code not in (WITHOUT, "days-missing"):
+            found.append(finding)
+    return found
+
+
+def _gaps(case: Case, record: StationRecord, without: set[str]) -> list[Finding]:
+    """What filling the record and giving it to the counties will say: days at which a season must stop."""
+    if not len(record.dates) or not len(case.table("counties")):
+        return []
+    filled, of_stations = weather.fill(record, case.settings)
+    known = [finding for finding in of_stations if finding.subject not in without]
+    return [*known, *weather.to_counties(case, filled)[1]]
 
 
 def _about(table: str, row: pd.Series) -> str:
@@ -133,32 +175,33 @@ def _twice(case: Case) -> Iterable[Finding]:
 
 
 def _unknown(case: Case) -> Iterable[Finding]:
-    """Ids that their own table does not list, each said once for a column, with the nearest known one."""
+    """Ids that their own table does not list, each said once for a column, with the nearest known one.
+
+    A list that has blank ids is no list: what it names cannot be known, and the blanks are said already.
+    """
     known = {name: _listed(case, name) for name in KEYS}
     for name, column, target in REFERENCES:
-        table = case.table(name)
-        if (
-            not len(table)
-            or column not in table
-            or (not known[target] and target in ("stations", "counties", "stands"))
-        ):
+        table, ids = case.table(name), known[target]
+        if ids is None or not len(table) or column not in table:
             continue
         named = _texts(table, column)
-        wrong = _rows(~named.isin(known[target]).to_numpy() & (named != "").to_numpy())
+        wrong = _rows(~named.isin(ids).to_numpy() & (named != "").to_numpy())
         for word, rows in table.iloc[wrong].groupby(named.iloc[wrong], sort=False):
             more = f"and {len(rows) - 1} more rows" if len(rows) > 1 else ""
-            detail = "; ".join(part for part in (_nearest(str(word), known[target]), more) if part)
+            detail = "; ".join(part for part in (_nearest(str(word), ids), more) if part)
             yield _finding(case, "id-unknown", name, int(rows.index[0]), column, word, detail)
-    cover = case.settings.rest_cover
-    if cover not in known["covers"]:
-        yield Finding("id-unknown", "settings", None, "rest_cover", cover, "", _nearest(cover, known["covers"]))
+    cover, ids = case.settings.rest_cover, known["covers"]
+    if ids is not None and cover not in ids:
+        yield Finding("id-unknown", "settings", None, "rest_cover", cover, "", _nearest(cover, ids))
 
 
-def _listed(case: Case, name: str) -> set[str]:
-    if name in ("covers", "soils"):
-        return {str(word) for word in stands.complete(case, name).index}
+def _listed(case: Case, name: str) -> set[str] | None:
+    """Ids of a table; None where nothing can be known: no rows where some are needed, or a blank among them."""
     table = case.table(name)
-    return set(_texts(table, KEYS[name])) - {""} if len(table) else set()
+    own = set(_texts(table, KEYS[name])) if len(table) else set()
+    if "" in own or (not own and name in NEEDED):
+        return None
+    return {str(word) for word in stands.complete(case, name).index} if name in ("covers", "soils") else own
 
 
 def _nearest(word: str, known: Iterable[str]) -> str:
@@ -242,15 +285,16 @@ def _without_stands(case: Case) -> Iterable[Finding]:
 # --- irrigation ---
 
 
-def _irrigation(case: Case) -> Iterable[Finding]:
+def _irrigation(case: Case, unread: Unread) -> Iterable[Finding]:
     """Events without a depth, water on rainfed stands, irrigated stands that never get any."""
     stand, event = case.table("stands"), case.table("irrigation_events")
     rainfed, watered = set[str](), set[str]()
     if len(stand):
         regime = stand["water_regime"].fillna("rainfed") if "water_regime" in stand else "rainfed"
-        dry = (regime == "rainfed") & stand["stand_id"].notna()
-        rainfed = set(stand.loc[dry, "stand_id"])
-        watered = set(stand.loc[~dry, "stand_id"])
+        read = np.array([("stands", row, "water_regime") not in unread for row in range(len(stand))])
+        known = stand["stand_id"].notna() & read
+        rainfed = set(stand.loc[known & (regime == "rainfed"), "stand_id"])
+        watered = set(stand.loc[known & (regime != "rainfed"), "stand_id"])
     if len(event):
         gross, net = (
             event[name].to_numpy(float) if name in event else np.full(len(event), np.nan)

@@ -46,7 +46,8 @@ def checked(
 
     case, findings, places = read(path, limits, progress)
     if case is not None:
-        findings = findings + [places.placed(finding) for finding in case_findings(case)]
+        unread = {(found.table, found.row, found.quantity) for found in findings if found.severity == "error"}
+        findings = findings + [places.placed(finding) for finding in case_findings(case, unread)]
     return case, ordered(findings)
 
 

@@ -160,7 +160,7 @@ def _unit(column: Column, unit: str | None, system: str, by_name: bool) -> tuple
     if known.dimension != units()[row.unit].dimension:
         return "", ("unit-wrong", f"{unit} is a unit of {known.dimension}; usual are {_usual(column)}")
     mine, other = (row.unit, row.us_unit) if system == "si" else (row.us_unit, row.unit)
-    if other and known.symbol == other and other != mine and not by_name:
+    if system and other and known.symbol == other and other != mine and not by_name:
         return known.symbol, ("unit-other-system", f"the settings say {'SI' if system == 'si' else 'US'} units")
     return known.symbol, None
 

@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 from etflux.findings import Finding
+from etflux.variables import convert, quantities
 from etflux.workbook.cells import letters
 
 
@@ -16,6 +17,7 @@ class Origin:
     heading_row: int = 1
     columns: dict[str, int] = field(default_factory=dict)
     texts: dict[str, str] = field(default_factory=dict)  # headings as written
+    units: dict[str, str] = field(default_factory=dict)  # of the numbers below them
     is_sheet: bool = True
 
     def place(self, row: int, quantity: str | None) -> str:
@@ -62,7 +64,31 @@ class Places:
         return next((origin for origin in origins if origin.name == named), origins[0] if origins else None)
 
     def placed(self, finding: Finding) -> Finding:
-        """Return a finding with its place filled in, unless it has one."""
+        """Return a finding with its place filled in, unless it has one; its number as it was written there."""
         if finding.place:
             return finding
-        return finding.at(self.of(finding.table, finding.row, finding.quantity, finding.subject))
+        place = self.of(finding.table, finding.row, finding.quantity, finding.subject)
+        return self._as_written(finding).at(place)
+
+    def _as_written(self, finding: Finding) -> Finding:
+        """A number, and the range it should lie in, in the unit of its heading instead of the SI unit."""
+        rows = self.rows.get(finding.table, [])
+        quantity = quantities().get(finding.quantity or "")
+        if (
+            quantity is None
+            or finding.row is None
+            or not finding.row < len(rows)
+            or not isinstance(finding.value, float)
+        ):
+            return finding
+        unit = rows[finding.row][0].units.get(quantity.name, "")
+        if not unit or unit == quantity.unit:
+            return finding
+
+        def written(number: float) -> float:
+            return float(f"{convert(number, quantity.unit, unit, quantity.kind).item():.6g}")
+
+        detail = finding.detail
+        if finding.code == "range" and quantity.low is not None and quantity.high is not None:
+            detail = f"from {written(quantity.low):.4g} to {written(quantity.high):.4g} {unit}"
+        return replace(finding, value=written(finding.value), detail=detail)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import replace
+from functools import partial
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -83,15 +84,15 @@ def read(
     places.titles |= titles
     version, said = _version(book)
     findings += said
-    settings, system, said = Settings(), "", []
+    settings, system, said = Settings(), "", [Finding("settings-missing", "settings", place=SETTINGS)]
     if "settings" in titles:
         settings, system, said = read_settings(book, titles["settings"], path.parent, places)
     findings += said
     blocks: dict[str, list[Block]] = {}
     for number, sheet in enumerate(sheets()):
         if sheet.table in titles:
-            tell(f"reading {titles[sheet.table]}", number / len(sheets()))
-            blocks[sheet.table] = [read_sheet(book, titles[sheet.table], sheet, system)]
+            told = partial(_tell, tell, number / len(sheets()))
+            blocks[sheet.table] = [read_sheet(book, titles[sheet.table], sheet, system, told)]
     files, said = _weather_files(blocks, path.parent, system, places)
     findings += said
     tell("reading done", 1.0)
@@ -100,6 +101,10 @@ def read(
     findings += said
     source = {"path": str(path), "sha256": sha256(path), "template_version": version, "weather_files": files}
     return Case(settings, tables, source), findings, places
+
+
+def _tell(tell: Progress, share: float, step: str) -> None:
+    tell(step, share)
 
 
 def _titles(book: Book) -> tuple[dict[str, str], list[Finding]]:
@@ -200,7 +205,8 @@ def _tables(blocks: dict[str, list[Block]], places: Places) -> tuple[dict[str, p
             offset += len(block.rows)
         if sheet.need == "ready":
             packaged = _packaged(sheet)
-            findings += _changed(sheet, table, packaged)
+            faulty = {(found.row, found.quantity) for found in findings if found.table == sheet.table}
+            findings += _changed(sheet, table, packaged, faulty)
             rest = packaged[~packaged[sheet.columns[0].name].isin(table[sheet.columns[0].name])]
             pieces = [piece for piece in (table, rest) if len(piece)]
             table = pd.concat(pieces, ignore_index=True) if pieces else packaged
@@ -234,8 +240,10 @@ def _packaged(sheet: Sheet) -> pd.DataFrame:
     return pd.DataFrame(found)
 
 
-def _changed(sheet: Sheet, table: pd.DataFrame, packaged: pd.DataFrame) -> list[Finding]:
-    """Notes on rows of the package that the workbook has with other values."""
+def _changed(
+    sheet: Sheet, table: pd.DataFrame, packaged: pd.DataFrame, said: set[tuple[int | None, str | None]]
+) -> list[Finding]:
+    """Notes on rows of the package that the workbook has with other values; nothing on cells with faults."""
     key = sheet.columns[0].name
     known = packaged.drop_duplicates(key).set_index(key)
     found = []
@@ -243,7 +251,7 @@ def _changed(sheet: Sheet, table: pd.DataFrame, packaged: pd.DataFrame) -> list[
         if name not in known.index:
             continue
         for column in sheet.columns[1:]:
-            if column.name in ("name", "source"):
+            if column.name in ("name", "source") or table[column.name].isna().all() or (row, column.name) in said:
                 continue
             mine, theirs = table[column.name].iloc[row], known.loc[name, column.name]
             same = (

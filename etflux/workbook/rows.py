@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from dataclasses import dataclass, field
 from itertools import chain, groupby
 from typing import TYPE_CHECKING, Any
@@ -21,6 +21,7 @@ if TYPE_CHECKING:
     import pandas as pd
 
 Row = tuple[int, list[Cell]]
+TOLD_EVERY = 5000
 HEADING_WITHIN = 15  # rows that are not blank in which the headings are looked for
 
 
@@ -47,7 +48,7 @@ class Block:
         )
 
 
-def read_sheet(book: Book, title: str, sheet: Sheet, system: str) -> Block:
+def read_sheet(book: Book, title: str, sheet: Sheet, system: str, tell: Callable[[str], None] | None = None) -> Block:
     """Read one sheet of a workbook.
 
     Parameters
@@ -59,15 +60,15 @@ def read_sheet(book: Book, title: str, sheet: Sheet, system: str) -> Block:
         What it should hold.
     system : str
         Unit system of the settings; "" when they do not say.
+    tell : callable, optional
+        Called with what is being read, again every few thousand rows.
 
     Returns
     -------
     Block
     """
     block = Block(sheet, Origin(title))
-    rows: Iterator[Row] = (
-        (number, list(cells)) for number, cells in groupby(book.cells(title), key=lambda cell: cell.row)
-    )
+    rows = _rows(book, title, tell or (lambda step: None))
     found = find_headings(sheet, rows)
     if found is None:
         for _ in rows:
@@ -80,9 +81,18 @@ def read_sheet(book: Book, title: str, sheet: Sheet, system: str) -> Block:
     headings = match(sheet, ((cell.column, cell.value) for cell in heading_cells if cell.kind == "text"), system)
     take_headings(block, number, headings)
     ignored = {cell.column for cell in heading_cells}
-    read_rows(block, headings, rows, ignored, book.epoch_1904)
-    _merged(block, book.merged.get(title, []))
+    blank = read_rows(block, headings, rows, ignored, book.epoch_1904)
+    merged = _merged(block, book.merged.get(title, []))
+    say_blank(block, [(row, name) for row, name in blank if not _inside(block, row, name, merged)])
     return block
+
+
+def _rows(book: Book, title: str, tell: Callable[[str], None]) -> Iterator[Row]:
+    """Rows of a sheet with a cell that is not blank, in the file's order."""
+    for count, (number, cells) in enumerate(groupby(book.cells(title), key=lambda cell: cell.row)):
+        if count % TOLD_EVERY == 0:
+            tell(f"reading {title}" + (f", row {number:,}" if count else ""))
+        yield number, list(cells)
 
 
 def find_headings(sheet: Sheet, rows: Iterator[Row]) -> tuple[int, list[Cell], Iterator[Row]] | None:
@@ -105,26 +115,34 @@ def take_headings(block: Block, number: int, headings: Headings) -> None:
     origin.heading_row = number
     origin.columns = {name: heading.position for name, heading in headings.found.items()}
     origin.texts = {name: heading.text for name, heading in headings.found.items()}
+    origin.units = {name: heading.unit for name, heading in headings.found.items()}
     block.understood = True
     at = {heading.position: name for name, heading in headings.found.items()}
+    other = [problem for problem in headings.problems if problem[1] == "unit-other-system"]
     for place, code, value, detail in headings.problems:
+        if code == "unit-other-system":  # said once for a sheet: either one heading is odd, or the setting is
+            if (place, code, value, detail) != other[0]:
+                continue
+            detail += f"; and {len(other) - 1} more headings" if len(other) > 1 else ""
         where = Origin(origin.name, columns={"": place or 1}, is_sheet=origin.is_sheet).place(number, None)
         block.say(code, None, at.get(place or 0), value, detail, where)
 
 
 def read_rows(
     block: Block, headings: Headings, rows: Iterable[Row], ignored: set[int], epoch_1904: bool, from_file: bool = False
-) -> None:
+) -> list[tuple[int, str]]:
     """Take the rows below the headings into columns.
 
     A row counts when one of its cells stands under a known heading. Cells under no heading at all are said once;
-    `ignored` are the columns that have some heading. In a CSV file (`from_file`) dates are always text.
+    `ignored` are the columns that have some heading. In a CSV file (`from_file`) dates are always text. Returns the
+    row (of the block) and column of the cells that must not be blank and are.
     """
     taken: dict[int, tuple[list[Any], Column]] = {
         heading.position: ([], heading.column) for heading in headings.found.values()
     }
     remarks: dict[tuple[str, str], list[Any]] = {}
     strays: list[str] = []
+    blank: list[tuple[int, str]] = []
     for number, cells in rows:
         if not any(cell.column in taken for cell in cells):
             strays += [cell.address for cell in cells if cell.column not in ignored]
@@ -148,20 +166,21 @@ def read_rows(
             value, code, detail = TAKE[column.kind](cell, column, epoch_1904)
             values[-1] = value
             if code and not (from_file and code in ("date-as-text", "text-like-code")):
-                shown = cell.value if cell.kind != "formula" else None
+                shown = as_shown(cell)
                 if rules()[code].severity == "note":
                     remarks.setdefault((column.name, code), []).append((index, shown, detail))
                 else:
                     block.say(code, index, column.name, shown, detail)
         for _, column in taken.values():
             if column.filled and column.name not in there:
-                block.say("value-missing", index, column.name, None)
+                blank.append((index, column.name))
     _remark(block, remarks)
     if strays:
         more = f"and {len(strays) - 1} more" if len(strays) > 1 else ""
         block.say("cells-without-heading", None, None, None, more, f"{block.origin.name}!{strays[0]}")
     for name, heading in headings.found.items():
         block.columns[name] = _column(heading.column, heading.unit, taken[heading.position][0])
+    return blank
 
 
 def _remark(block: Block, remarks: dict[tuple[str, str], list[Any]]) -> None:
@@ -172,17 +191,43 @@ def _remark(block: Block, remarks: dict[tuple[str, str], list[Any]]) -> None:
         block.say(code, index, name, shown, "; ".join(part for part in (detail, count) if part))
 
 
-def _merged(block: Block, ranges: list[str]) -> None:
-    """Merged cells in the table hide values: an error at the first cell of each."""
+Corners = tuple[tuple[int, int], tuple[int, int]]
+
+
+def say_blank(block: Block, cells: list[tuple[int, str]]) -> None:
+    """Say which cells must not be blank."""
+    for row, name in cells:
+        block.say("value-missing", row, name)
+
+
+def as_shown(cell: Cell) -> Any:
+    """A cell's value as its sheet shows it."""
+    if cell.kind == "date":
+        return f"{cell.value:%Y-%m-%d %H:%M}".removesuffix(" 00:00")
+    if cell.kind == "number" and float(cell.value).is_integer():
+        return int(cell.value)
+    return None if cell.kind == "formula" else cell.value
+
+
+def _inside(block: Block, row: int, name: str, ranges: list[Corners]) -> bool:
+    line, column = block.rows[row], block.origin.columns[name]
+    return any(top <= line <= bottom and left <= column <= right for (top, left), (bottom, right) in ranges)
+
+
+def _merged(block: Block, ranges: list[str]) -> list[Corners]:
+    """Merged cells in the table hide values: an error at the first cell of each; their corners."""
+    found = []
     columns, origin = set(block.origin.columns.values()), block.origin
     last = max(block.rows, default=origin.heading_row)
     for reference in ranges:
         corners = [position(corner) for corner in reference.split(":")]
         (top, left), (bottom, right) = corners[0], corners[-1]
+        found.append((corners[0], corners[-1]))
         inside = top <= last and bottom >= origin.heading_row and any(left <= column <= right for column in columns)
         if inside:
             first = reference.split(":")[0].replace("$", "")
             block.say("merged-cells", None, None, reference, "", f"{origin.name}!{first}")
+    return found
 
 
 def _column(column: Column, unit: str, values: list[Any]) -> Any:

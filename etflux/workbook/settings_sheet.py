@@ -12,6 +12,7 @@ from etflux.variables import Setting, convert, settings_table, units
 from etflux.workbook.cells import Book, Cell
 from etflux.workbook.headings import nearest, plain, unit_of
 from etflux.workbook.places import Places
+from etflux.workbook.rows import as_shown
 from etflux.workbook.sheets import DATE_SETTINGS, Column
 from etflux.workbook.values import TAKE
 from etflux.workbook.weather_files import Trouble, beside
@@ -74,7 +75,7 @@ def read_settings(book: Book, title: str, folder: Path, places: Places) -> tuple
         places.settings[setting.name] = where
         taken, code, detail = _taken(setting, value, unit, book.epoch_1904, folder)
         if code:
-            findings.append(_finding(code, setting.name, value.value, detail, where))
+            findings.append(_finding(code, setting.name, as_shown(value), detail, where))
         if taken is not None:
             values[setting.name] = taken
     settings = Settings(**values)
@@ -118,7 +119,7 @@ def _number(setting: Setting, cell: Cell, unit: Cell | None, epoch_1904: bool) -
         return None, code, detail
     if setting.unit in units():
         if unit is None:
-            return None, "unit-missing", f"the unit beside it is usually {setting.unit}"
+            return None, "setting-unit-missing", f"usually {setting.unit}"
         known = unit_of(str(unit.value))
         if known is None:
             return None, "unit-unknown", f"usually {setting.unit}"

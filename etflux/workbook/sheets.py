@@ -161,7 +161,7 @@ WORDS: Mapping[tuple[str, str], tuple[str, str]] = {
     ("soils", "soil_id"): ("Soil id", "Letters, digits and _ . -"),
     ("soils", "theta_fc"): ("", "Share of the soil's volume."),
     ("soils", "theta_wp"): ("", "Share of the soil's volume."),
-    ("soils", "evaporation_depth_m"): ("", "Soil that evaporation dries. Blank: 0.10 m."),
+    ("soils", "evaporation_depth_m"): ("", "Soil that evaporation dries. Blank: 0.10 m (4 in)."),
     ("soils", "hydrologic_group"): ("", "A to D; of B/D the first letter holds where drained, else the second. "
                                         "Blank: B."),
     ("covers", "cover_id"): ("Cover id", "Letters, digits and _ . -"),
@@ -261,6 +261,7 @@ def _column(table: str, name: str, needed: bool) -> Column:
     )
 
 
+ORDERED = ("stations", "counties", "soils", "profiles")
 # Cells of a cover that may be blank, whatever its habit; checks.py knows what each habit needs.
 COVER_NEEDED = ("cover_id", "tag", "habit", "marks")
 
@@ -269,9 +270,10 @@ def _columns(table: str) -> tuple[Column, ...]:
     if table == "covers":
         return tuple(_column(table, name, name in COVER_NEEDED) for name in packaged_rows("covers")[0])
     must, may = TABLES[table]
-    # a name reads best next to its id
-    order = [*must[:1], *(name for name in may if name == "name"), *must[1:], *(name for name in may if name != "name")]
-    return tuple(_column(table, name, name in must) for name in order)
+    # as a person writes them down: a name next to its id, a balloon's place before its levels
+    first = (*must[:1], "name", "time", "latitude_deg", "longitude_deg", "elevation_m", "height_m", "pressure_kpa")
+    order = dict.fromkeys(name for name in (*(first if table in ORDERED else must[:1]), *must, *may))
+    return tuple(_column(table, name, name in must) for name in order if name in (*must, *may))
 
 
 # Order of the sheets, from "what do I need to fill in first?": first the four without which nothing runs, each after
@@ -280,25 +282,25 @@ def _columns(table: str) -> tuple[Column, ...]:
 _SHEETS: tuple[tuple[str, str, Need, str, int], ...] = (
     ("stations", "Stations", "needed", "One row for each place with daily weather.", 12),
     ("weather", "Weather", "needed", "One row for each station and day. What a station does not measure stays blank; "
-     "long records may be CSV files, named in the Stations sheet.", 62),
-    ("counties", "Counties", "needed", "One row for each county or other area that is reported.", 30),
+     "long records may be CSV files, named in the Stations sheet.", 50),
+    ("counties", "Counties", "needed", "One row for each county or other area that is reported.", 24),
     ("stands", "Stands", "needed", "One row for each cover on one soil under one water regime in one county, with its "
-     "whole area there.", 60),
+     "whole area there.", 28),
     ("rain_gauges", "Rain gauges", "useful", "Rain read in the counties themselves, one row for each county and day.",
-     30),
+     24),
     ("irrigation_rules", "Irrigation rules", "useful", "Ways to decide on irrigation, one row each, named in the "
      "Stands sheet. What is blank takes the value in the note.", 10),
     ("irrigation_events", "Irrigation dates", "useful", "Irrigation that was given, one row for each stand and day.",
-     30),
+     22),
     ("observations", "Observations", "useful", "What was seen in the field: stages, canopy, cuts, grazing, a replant. "
-     "It goes before what is computed.", 30),
+     "It goes before what is computed.", 22),
     ("rest", "Rest of county", "useful", "What covers the part of a county that no stand represents; without rows it "
      "is extensively grazed grassland.", 20),
     ("mixing_depths", "Mixing depths", "air", "Depth of the air mixed by the day's heating, where it is known; "
-     "otherwise it is computed.", 30),
+     "otherwise it is computed.", 22),
     ("profiles", "Profiles", "air", "Morning balloon profiles, one row for each level, from the ground up; without "
-     "them a standard profile is taken.", 40),
-    ("wind", "Wind", "air", "Wind in the mixed air by day and night. The carrying of moisture by wind uses it.", 30),
+     "them a standard profile is taken.", 25),
+    ("wind", "Wind", "air", "Wind in the mixed air by day and night.", 22),
     ("soils", "Soils", "ready", "Ready to use. Change a row, or add soils of your own below.", 4),
     ("covers", "Covers", "ready", "Ready to use. Change a row, or add covers of your own below.", 4),
 )  # fmt: skip

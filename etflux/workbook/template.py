@@ -192,7 +192,6 @@ def _packaged(sheet: Sheet, row: Mapping[str, str], system: System) -> list[Any]
 
 def _sheet(page: Worksheet, sheet: Sheet, rows: list[list[Any]], system: System) -> None:
     style.tab(page, sheet.need)
-    style.put(page, 1, 1, sheet.purpose, "purpose")
     for position, column in enumerate(sheet.columns, start=1):
         note = " ".join(part for part in ("Needed." if column.needed else "", column.note) if part)
         style.put(page, HEADING_ROW - 1, position, note, "note")
@@ -200,7 +199,8 @@ def _sheet(page: Worksheet, sheet: Sheet, rows: list[list[Any]], system: System)
     empty = [[None] * len(sheet.columns)] * (sheet.ruled_rows if not rows or sheet.need == "ready" else 0)
     for number, cells in enumerate([*rows, *empty], start=FIRST_ROW):
         for position, (column, value) in enumerate(zip(sheet.columns, cells, strict=True), start=1):
-            style.put(page, number, position, value, "input", style.number_format(column, value))
+            look = "input words" if column.name == "source" else "input"
+            style.put(page, number, position, value, look, style.number_format(column, value))
     style.columns(page, sheet, rows, HEADING_ROW)
     page.freeze_panes = page.cell(FIRST_ROW, style.frozen_columns(sheet) + 1)
     page.print_title_rows = f"{HEADING_ROW}:{HEADING_ROW}"
@@ -249,6 +249,7 @@ def _choices(page: Worksheet) -> dict[str, str]:
         page.column_dimensions[letter].width = max(14.0, min(30.0, max(map(len, (label, *words))) + 2.0))
         found[name] = f"='{CHOICES}'!${letter}${FIRST_ROW}:${letter}${FIRST_ROW + len(words) - 1}"
     page.freeze_panes = page.cell(FIRST_ROW, 1)
+    page.page_setup.fitToWidth, page.page_setup.pageOrder = 2, "overThenDown"
     return found
 
 
@@ -262,22 +263,18 @@ def _settings(page: Worksheet, given: Mapping[str, Any], system: System) -> None
     for position, label in enumerate(SETTING_COLUMNS, start=1):
         style.put(page, HEADING_ROW, position, label, "needed" if label == "Value" else "optional")
     for number, row in enumerate(settings_table().values(), start=FIRST_ROW):
-        unit = _setting_unit(row, system)
         value = setting_cell(row, given[row.name], system) if row.name in given else None
-        for position, text in enumerate(
-            (row.group, row.label, value, unit, _shown(setting_cell(row, row.default, system)), row.sentence,
-             _allowed(row, system), row.source), start=1,
-        ):  # fmt: skip
-            look = "input" if position == 3 else "plain"
-            style.put(page, number, position, text, look, "yyyy-mm-dd" if row.name in DATE_SETTINGS else "General")
+        default = _shown(setting_cell(row, row.default, system))
+        texts = (row.group, row.label, value, _setting_unit(row, system), default, row.sentence,
+                 _allowed(row, system), row.source)  # fmt: skip
+        style.put_setting(page, number, texts, row.name in DATE_SETTINGS)
         words = ("yes", "no") if row.type == "bool" else row.choices
         if words:
             rule = DataValidation(type="list", formula1='"' + ",".join(words) + '"', allow_blank=True)
             rule.showErrorMessage = True
             rule.add(page.cell(number, 3))
             page.add_data_validation(rule)
-    for letter, width in zip("ABCDEFGH", (14, 36, 24, 12, 18, 46, 22, 40), strict=True):
-        page.column_dimensions[letter].width = width
+    style.setting_columns(page)
     page.freeze_panes = page.cell(FIRST_ROW, 3)
     page.print_title_rows = f"{HEADING_ROW}:{HEADING_ROW}"
 
@@ -314,7 +311,7 @@ def _allowed(row: Setting, system: System) -> str:
     if row.low is None or row.high is None:
         return "text"
     low, high = (_shown(setting_cell(row, value, system)) for value in (row.low, row.high))
-    return f"{low:g} to {high:g}"
+    return f"{low:.10g} to {high:.10g}"
 
 
 def _read_first(page: Worksheet, system: System) -> None:

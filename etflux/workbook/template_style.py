@@ -38,6 +38,11 @@ RULES = (
     "Values pasted from other programs: paste values only, and no merged cells.",
 )
 WIDTH_READ_FIRST = (22, 20, 96)
+LEAST_WIDTH = {"date": 12.0, "time": 17.0, "text": 22.0, "file": 20.0, "id": 13.0, "choice": 13.0}
+NUMBER_WIDTH, SOURCE_WIDTH, WIDEST = 10.5, 80.0, 32.0
+# Letters to a unit of width, of 9 and of 8 points.
+LETTERS, SMALL_LETTERS = 1.12, 1.25
+PAGE_WIDTH = 215.0  # wider sheets print on two pages side by side, ids on both
 
 
 @cache
@@ -63,7 +68,9 @@ def _looks() -> dict[str, dict[str, Any]]:
         "needed": {"font": font(9, "FFFFFF", bold=True), "fill": fill(DEEP), "alignment": middle, "border": box},
         "optional": {"font": font(9, INK, bold=True), "fill": fill(PALE), "alignment": middle, "border": box},
         "input": {"font": font(), "fill": fill(INPUT), "border": box, "alignment": Alignment(vertical="top")},
-        "plain": {"font": font(), "alignment": top},
+        "input words": {"font": font(), "fill": fill(INPUT), "border": box, "alignment": top},
+        "plain": {"font": font(), "alignment": Alignment(vertical="top", wrap_text=True, horizontal="left")},
+        "soft": {"font": font(9, SOFT), "alignment": top},
         "wrapped": {"font": font(), "alignment": top},
         "link name": {"font": font(9, INK, bold=True), "alignment": top},
     }
@@ -109,24 +116,75 @@ def frozen_columns(sheet: Sheet) -> int:
 
 
 def columns(page: Worksheet, sheet: Sheet, rows: list[list[Any]], heading_row: int) -> None:
-    """Widths by what the cells hold; heights by the longest note and heading."""
+    """Widths by what the cells hold; heights by the longest note and heading; what a row is, on top."""
     from openpyxl.utils import get_column_letter
 
     lines_note = lines_heading = 1
+    total = 0.0
     for position, column in enumerate(sheet.columns):
-        longest = max((len(_as_shown(row[position])) for row in rows), default=0)
-        least = {"date": 13.0, "time": 17.0, "text": 22.0, "file": 20.0, "id": 14.0, "choice": 14.0}.get(
-            column.kind, 12.0
-        )
         heading = column.heading("us")
-        width = max(least, min(longest + 2.0, 32.0), max(map(len, heading.split())) + 2.0)
+        width = _width(column, heading, [row[position] for row in rows])
         page.column_dimensions[get_column_letter(position + 1)].width = width
         note = f"Needed. {column.note}" if column.needed else column.note
-        lines_note = max(lines_note, _lines(note, width * 1.12))
-        lines_heading = max(lines_heading, _lines(heading, width * 0.95))
+        lines_note = max(lines_note, _lines(note, width * SMALL_LETTERS))
+        lines_heading = max(lines_heading, _lines(heading, width * LETTERS))
+        total += width
     page.row_dimensions[1].height = 20.0
-    page.row_dimensions[heading_row - 1].height = 11.0 * lines_note + 3.0
-    page.row_dimensions[heading_row].height = 12.5 * lines_heading + 4.0
+    page.row_dimensions[heading_row - 1].height = 10.5 * lines_note + 3.0
+    page.row_dimensions[heading_row].height = 12.0 * lines_heading + 4.0
+    if total > PAGE_WIDTH:
+        two_pages(page)
+    put(page, 1, 2 if total > PAGE_WIDTH else 1, sheet.purpose, "purpose")
+    _row_heights(page, sheet, rows, heading_row)
+
+
+def two_pages(page: Worksheet) -> None:
+    """Print a wide sheet on two pages side by side, with the first column on both."""
+    page.page_setup.fitToWidth = 2
+    page.page_setup.pageOrder = "overThenDown"
+    page.print_title_cols = "A:A"
+
+
+def _width(column: Column, heading: str, values: list[Any]) -> float:
+    if column.name == "source":
+        return SOURCE_WIDTH if values else LEAST_WIDTH["text"]
+    longest = max((len(_as_shown(value)) for value in values), default=0)
+    if column.kind == "number":
+        longest = min(longest, 10)
+    words = max(map(len, heading.split())) / LETTERS
+    return max(LEAST_WIDTH.get(column.kind, NUMBER_WIDTH), min(longest + 2.0, WIDEST), words + 1.5)
+
+
+def _row_heights(page: Worksheet, sheet: Sheet, rows: list[list[Any]], heading_row: int) -> None:
+    """Room for sources that take several lines."""
+    for number, cells in enumerate(rows, start=heading_row + 1):
+        lines = max(
+            (_lines(str(value), SOURCE_WIDTH * LETTERS)
+             for column, value in zip(sheet.columns, cells, strict=True) if column.name == "source" and value),
+            default=1,
+        )  # fmt: skip
+        if lines > 1:
+            page.row_dimensions[number].height = 12.0 * lines + 1.0
+
+
+SETTING_WIDTHS = (12, 32, 18, 11, 15, 46, 20, 40)
+_SETTING_LOOKS = ("soft", "link name", "input words", "plain", "plain", "plain", "plain", "soft")
+
+
+def setting_columns(page: Worksheet) -> None:
+    """Widths of the settings sheet."""
+    for letter, width in zip("ABCDEFGH", SETTING_WIDTHS, strict=True):
+        page.column_dimensions[letter].width = width
+    page.row_dimensions[1].height = 20.0
+
+
+def put_setting(page: Worksheet, number: int, texts: tuple[Any, ...], is_date: bool) -> None:
+    """One row of the settings sheet, as high as its longest text."""
+    lines = 1
+    for position, (text, look, width) in enumerate(zip(texts, _SETTING_LOOKS, SETTING_WIDTHS, strict=True), start=1):
+        put(page, number, position, text, look, DATE_FORMAT if position == 3 and is_date else "General")
+        lines = max(lines, _lines(_as_shown(text), width * LETTERS))
+    page.row_dimensions[number].height = 12.0 * lines + 2.0
 
 
 def _as_shown(value: Any) -> str:
@@ -167,7 +225,7 @@ def read_first(page: Worksheet, version_label: str, version: int, system: System
             number += 1
             page.merge_cells(start_row=number, end_row=number, start_column=1, end_column=3)
             put(page, number, 1, line, "wrapped")
-            page.row_dimensions[number].height = 12.5 * _lines(line, 150.0) + 2.0
+            page.row_dimensions[number].height = 12.5 * _lines(line, 170.0) + 2.0
         number += 2
     put(page, number, 1, "Sheets", "strong")
     number += 1
@@ -183,7 +241,7 @@ def page(sheet: Worksheet, system: System, version: int) -> None:
     """Print set-up: landscape, as wide as the page, heading repeated, named and numbered."""
     sheet.page_setup.orientation = "landscape"
     sheet.page_setup.paperSize = sheet.PAPERSIZE_LETTER if system == "us" else sheet.PAPERSIZE_A4
-    sheet.page_setup.fitToWidth, sheet.page_setup.fitToHeight = 1, 0
+    sheet.page_setup.fitToWidth, sheet.page_setup.fitToHeight = sheet.page_setup.fitToWidth or 1, 0
     sheet.sheet_properties.pageSetUpPr.fitToPage = True
     for side in ("left", "right"):
         setattr(sheet.page_margins, side, 0.4)

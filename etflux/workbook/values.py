@@ -33,6 +33,7 @@ _DAY_MONTH = re.compile(r"\d{1,4}[/.\-]\d{1,2}[/.\-]\d{1,4}\Z")
 _ZONE = re.compile(r"(.*\d)\s*(Z|UTC|GMT|[+\-]\d{2}:?\d{2})\Z", re.IGNORECASE)
 _CODE_LIKE = re.compile(r"[=+\-@\t\r]|.*<[A-Za-z!/]", re.DOTALL)
 FIRST_YEAR, LAST_YEAR = 1850, 2200
+FIRST_YEAR_OF_NUMBERS = 1950  # a plain 153 is a day of the year and not 1900-06-01
 
 
 def _not_a_value(cell: Cell) -> Taken | None:
@@ -73,6 +74,8 @@ def date(cell: Cell, column: Column, epoch_1904: bool) -> Taken:
         when, code = (from_serial(cell.value, epoch_1904) if whole else None), "date-as-number"
         if when is None:
             return Taken(None, "date-unreadable")
+        if when.year < FIRST_YEAR_OF_NUMBERS:
+            return Taken(None, "date-implausible", f"as a day number it is {when.date()}")
     if cell.kind == "text":
         words = cell.value.strip()
         match = _ISO_DATE.match(words)

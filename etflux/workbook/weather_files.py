@@ -13,7 +13,7 @@ from pathlib import Path, PurePosixPath, PureWindowsPath
 from etflux.workbook.cells import Cell
 from etflux.workbook.headings import match, nearest, recognised
 from etflux.workbook.places import Origin
-from etflux.workbook.rows import Block, Row, find_headings, read_rows, take_headings
+from etflux.workbook.rows import Block, Row, find_headings, read_rows, say_blank, take_headings
 from etflux.workbook.sheets import sheet_of
 
 LARGEST_BYTES = 20_000_000
@@ -103,7 +103,8 @@ def read_file(path: Path, name: str, stations: list[str], system: str) -> Block:
         headings.problems = [row for row in headings.problems if row[1:3] != ("column-missing", "Station id")]
     take_headings(block, number, headings)
     numeric = {heading.position for heading in headings.found.values() if heading.column.kind == "number"}
-    read_rows(block, headings, _numbers(rest, numeric, comma), {cell.column for cell in heading_cells}, False, True)
+    rows_in = _numbers(rest, numeric, comma)
+    say_blank(block, read_rows(block, headings, rows_in, {cell.column for cell in heading_cells}, False, True))
     _stations(block, stations)
     return block
 
