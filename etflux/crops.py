@@ -234,7 +234,7 @@ def stage_means(
     values : ndarray, shape (day, station)
     station : ndarray of int, shape (unit,)
     first, last : ndarray, shape (unit,)
-        Day positions; cut to the record.
+        Day positions, whole or between two days; cut to the record.
 
     Returns
     -------
@@ -244,8 +244,8 @@ def stage_means(
     good = np.isfinite(values)
     sums = np.concatenate([np.zeros((1, values.shape[1])), np.cumsum(np.where(good, values, 0.0), axis=0)])
     count = np.concatenate([np.zeros((1, values.shape[1])), np.cumsum(good, axis=0)])
-    a = np.clip(np.nan_to_num(first), 0, len(values)).astype(int)
-    b = np.maximum(np.clip(np.nan_to_num(last), 0, len(values)).astype(int), a)
+    a = np.ceil(np.clip(np.nan_to_num(first), 0, len(values))).astype(int)
+    b = np.maximum(np.ceil(np.clip(np.nan_to_num(last), 0, len(values))).astype(int), a)
     days = count[b, station] - count[a, station]
     with np.errstate(invalid="ignore", divide="ignore"):
         mean = (sums[b, station] - sums[a, station]) / days

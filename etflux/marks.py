@@ -205,7 +205,7 @@ def requirements(
     Returns
     -------
     requirement : ndarray, shape (mark, unit)
-        [degC d] or [d].
+        [degC d] or whole [d].
     by_heat : ndarray of bool, shape (unit,)
     """
     cover = units["cover_id"].to_numpy(str)
@@ -220,7 +220,7 @@ def requirements(
     )
     emergence = np.minimum(np.nan_to_num(units["emergence_d"].to_numpy(float)), ini)
     steps = np.stack([emergence, ini - emergence, V8_SHARE * dev, (1.0 - V8_SHARE) * dev, mid, late])
-    days = np.cumsum(steps, axis=0) * _late_planted(units, settings, ini + dev + mid + late, planted)
+    days = np.round(np.cumsum(steps, axis=0) * _late_planted(units, settings, ini + dev + mid + late, planted))
     heat = np.full(days.shape, np.nan)
     hybrid = units["hybrid_heat_units"].to_numpy(float)
     hybrid = np.where(np.isnan(hybrid), settings.default_hybrid_heat_units, hybrid)
@@ -289,10 +289,10 @@ def freeze_marks(record: StationRecord, settings: Settings, year: int) -> dict[s
     from_record = np.where(warm.any(axis=0), warm.argmax(axis=0), np.nan)
     told = at(*GREENUP_RECORD_FROM) >= 0  # the record shows this winter's end
     poleward = np.clip(np.abs(record.latitude_deg) - 35.0, 0.0, 25.0)
-    mean_date = at(1, 1) + 63.0 + 4.5 * poleward
+    mean_date = at(1, 1) + np.round(63.0 + 4.5 * poleward)
     in_autumn = freezing & (day >= at(*AUTUMN_FROM)) & (day < at(*AUTUMN_FROM) + 200)
     freeze = np.where(in_autumn.any(axis=0), in_autumn.argmax(axis=0).astype(float), np.nan)
-    mean_freeze = at(1, 1) + 320.0 - 4.5 * poleward
+    mean_freeze = at(1, 1) + np.round(320.0 - 4.5 * poleward)
     freeze = np.where(np.isnan(freeze) & (mean_freeze < 0.0), mean_freeze, freeze)  # an autumn before the record
     return {
         "greenup": np.where(told, from_record, mean_date),

@@ -8,7 +8,7 @@ import numpy as np
 
 from etflux import marks as marking
 from etflux.canopy.curves import Grown, StageClimate
-from etflux.canopy.observed import Seen, before_and_after, positions
+from etflux.canopy.observed import Seen, positions
 from etflux.crops import Stage, growth_share, piecewise
 from etflux.findings import Finding
 from etflux.stands import packaged
@@ -43,17 +43,16 @@ def grow(units: pd.DataFrame, record: StationRecord, settings: Settings, seen: S
         Of these units.
     """
     planting = positions(units["planting_date"], record.dates[0])
-    again = seen.marks["replant"]
-    early, late = before_and_after(seen.marks, again)
-    first, findings = _sown(units, record, settings, planting, early, again)
-    second_crop = np.flatnonzero(~np.isnan(again))
+    first, findings = _sown(units, record, settings, planting, seen.first, seen.replant)
+    second_crop = np.flatnonzero(~np.isnan(seen.replant))
     if not len(second_crop):
         return first, findings
     part = units.iloc[second_crop].reset_index(drop=True)
-    late = {name: days[second_crop] for name, days in late.items()}
+    later = {name: days[second_crop] for name, days in seen.second.items()}
     never = np.full(len(part), np.nan)
-    second, found = _sown(part, record, settings, again[second_crop], late, never)
-    return _joined(first, second, second_crop, again), findings + found
+    second, found = _sown(part, record, settings, seen.replant[second_crop], later, never)
+    second.basis["planting"][:] = "replanted"
+    return _joined(first, second, second_crop, seen.replant), findings + found
 
 
 def _joined(first: Grown, second: Grown, where: np.ndarray, again: np.ndarray) -> Grown:
@@ -104,7 +103,7 @@ def _sown(
     share = np.where(growing, np.maximum.accumulate(np.where(growing, share, 0.0), axis=0), 0.0)
     basis = _basis(units, seen, by_heat, grown, n_days)
     basis["harvest"] = np.where(np.isnan(entered), "days after maturity, a default", "entered").astype(object)
-    basis["planting"] = np.where(np.isnan(seen["replant"]), "entered", "replanted").astype(object)
+    basis["planting"] = np.full(len(units), "entered", dtype=object)
     basis["killed"] = np.full(len(units), "frost", dtype=object)
     return Grown(stage, kcb, share, provisional, full, marks, basis), findings
 
@@ -164,7 +163,7 @@ def _kcb(
     """Basal coefficient by day, at full cover, and the provisional bits.
 
     Eq. 66 between the marks; after maturity down to the dried value; a killed crop has at most that; 0 from the
-    harvest on. A frost or a harvest cuts the curve, it does not bend what came before.
+    harvest on. A frost or a harvest ends the curve and does not bend what came before ([FAO56] p. 125).
     """
     n_days = len(record.dates)
     day = np.arange(n_days, dtype=float)[:, None]

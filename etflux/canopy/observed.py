@@ -30,14 +30,18 @@ class Seen:
 
     Parameters
     ----------
-    marks : dict of str to ndarray, shape (unit,)
-        Days of observed stages, of the harvest and of a replant; NaN where none.
+    replant : ndarray, shape (unit,)
+        Day of a replant; NaN where none.
+    first, second : dict of str to ndarray, shape (unit,)
+        Days of stages and of the harvest seen before the replant, and from it on; NaN where none.
     cuts : ndarray of bool, shape (day, unit)
     canopies : DataFrame
         Measured canopies: unit, day, is_area, value.
     """
 
-    marks: dict[str, np.ndarray]
+    replant: np.ndarray
+    first: dict[str, np.ndarray]
+    second: dict[str, np.ndarray]
     cuts: np.ndarray
     canopies: pd.DataFrame
 
@@ -68,25 +72,26 @@ def observed(units: pd.DataFrame, observations: pd.DataFrame, dates: np.ndarray)
     spread = positions(units["planting_date"], dates[0]) - positions(units["planting_date_middle"], dates[0])
     shift = np.where(units["part"].isin(("early", "late")), np.nan_to_num(spread), 0.0)
 
-    marks = {}
-    for word, name in (*OBSERVED_MARKS.items(), ("harvest", "harvest"), ("replant", "replant")):
-        marks[name] = np.full(len(units), np.nan)
+    def days_of(rows: pd.DataFrame, word: str) -> np.ndarray:
         found = rows[rows["word"] == word]
         unit = found["unit"].to_numpy(int)
-        marks[name][unit] = found["day"].to_numpy(float) + (shift[unit] if word in OBSERVED_MARKS else 0.0)
+        days = np.full(len(units), np.nan)
+        days[unit] = found["day"].to_numpy(float) + (shift[unit] if word in OBSERVED_MARKS else 0.0)
+        return days
+
+    replant = days_of(rows, "replant")
+    again = (rows["day"] >= replant[rows["unit"]]).to_numpy()
+    names = {**OBSERVED_MARKS, "harvest": "harvest"}
+    first, second = (
+        {name: days_of(part, word) for word, name in names.items()} for part in (rows[~again], rows[again])
+    )
     cuts = np.zeros((len(dates), len(units)), dtype=bool)
     found = rows[rows["word"].isin(CUTS) & rows["day"].between(0, len(dates) - 1)]
     cuts[found["day"].to_numpy(int), found["unit"].to_numpy(int)] = True
     cuts &= (units["cutting"] == "dated").to_numpy()
     canopies = rows[rows["word"].isin(CANOPIES) & rows["value"].notna() & rows["day"].between(0, len(dates) - 1)]
-    return Seen(marks, cuts, canopies.assign(is_area=canopies["word"] == "leaf area").sort_values(["unit", "day"]))
-
-
-def before_and_after(marks: dict[str, np.ndarray], day: np.ndarray) -> tuple[dict[str, np.ndarray], ...]:
-    """Marks seen before a day, and from it on; all of them before where the day is NaN."""
-    early = {name: np.where(seen >= day, np.nan, seen) for name, seen in marks.items()}
-    late = {name: np.where(seen >= day, seen, np.nan) for name, seen in marks.items()}
-    return early, late
+    canopies = canopies.assign(is_area=canopies["word"] == "leaf area").sort_values(["unit", "day"])
+    return Seen(replant, first, second, cuts, canopies)
 
 
 def moved_to_canopies(

@@ -102,7 +102,8 @@ def canopy(
     stage, provisional = _whole(parts, "stage", shape, np.int8), _whole(parts, "provisional", shape, np.uint8)
     kcb, share, full = (_whole(parts, name, shape[-n:], float) for name, n in (("kcb", 2), ("share", 2), ("full", 1)))
     marks, basis = _marks(parts, len(units))
-    kcb = moved_to_canopies(kcb, seen.canopies, full, units["height_max_m"].to_numpy(float), _season(marks, is_annual))
+    season = _season(marks, is_annual, marks.pop("full_season"))
+    kcb = moved_to_canopies(kcb, seen.canopies, full, units["height_max_m"].to_numpy(float), season)
     station = units["station_index"].to_numpy(int)
     u2, rh_min = record.values["u2_m_s"][:, station], record.values["rh_min_pct"][:, station]
     height = units["height_max_m"].to_numpy(float) * _height_share(kcb, share, full, stage, is_annual)
@@ -130,7 +131,8 @@ def _rows(units: pd.DataFrame, which: np.ndarray) -> pd.DataFrame:
 
 def _part(seen: Seen, which: np.ndarray) -> Seen:
     """Observations of some units; measured canopies are applied to all units at once."""
-    return Seen({name: days[which] for name, days in seen.marks.items()}, seen.cuts[:, which], seen.canopies[:0])
+    first, second = ({name: days[which] for name, days in marks.items()} for marks in (seen.first, seen.second))
+    return Seen(seen.replant[which], first, second, seen.cuts[:, which], seen.canopies[:0])
 
 
 def _whole(parts: list[tuple[np.ndarray, Grown]], name: str, shape: tuple[int, ...], kind: type) -> np.ndarray:
@@ -155,9 +157,11 @@ def _marks(parts: list[tuple[np.ndarray, Grown]], n_units: int) -> tuple[dict[st
     return marks, basis
 
 
-def _season(marks: dict[str, np.ndarray], is_annual: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+def _season(
+    marks: dict[str, np.ndarray], is_annual: np.ndarray, full_season: np.ndarray
+) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     """Start, full cover and end of every season, (season, unit); annual crops have one, in the first row."""
-    start, full = marks["greenup"].copy(), marks["full_season"].copy()
+    start, full = marks["greenup"].copy(), full_season.copy()
     end = np.nan_to_num(marks["end"], nan=np.inf)
     start[0, is_annual] = marks["emergence"][is_annual]
     full[0, is_annual] = np.nan_to_num(marks["full_cover"][is_annual], nan=np.inf)
