@@ -11,6 +11,15 @@ from typing import Any
 __version__ = "0.1.0"
 
 _HOME = {
+    "run_workbook": "etflux.workbook.job",
+    "run_case": "etflux.run",
+    "Results": "etflux.results",
+    "check": "etflux.workbook",
+    "write_template": "etflux.workbook",
+    "EtfluxError": "etflux.findings",
+    "ProblemsFound": "etflux.findings",
+    "CannotRead": "etflux.findings",
+    "CannotWrite": "etflux.findings",
     "Case": "etflux.case",
     "Settings": "etflux.case",
     "with_settings": "etflux.case",

@@ -153,3 +153,7 @@ def _save_report(arguments: list[str]) -> str:
         report.write(f"etflux {__version__}, Python {platform.python_version()}, {platform.platform()}\n")
         report.write(f"arguments: {arguments}\n\n{traceback.format_exc()}")
     return report.name
+
+
+if __name__ == "__main__":
+    main()

@@ -1,6 +1,6 @@
 """The chain, in order: weather, reference ET, stands, crops, soil water, counties, air.
 
-This is the only module that knows the order. Read :func:`run` from top to bottom and you have seen the whole job; what
+This is the only module that knows the order. Read :func:`run_case` from top to bottom and you have seen the whole job; what
 it calls is a science module's own function or a small assembly step of ``assemble``.
 """
 
@@ -19,7 +19,7 @@ if TYPE_CHECKING:
 Progress = Callable[[str, float], None]
 
 
-def run(case: Case, findings: Sequence[Finding] | None = None, progress: Progress | None = None) -> Results:
+def run_case(case: Case, findings: Sequence[Finding] | None = None, progress: Progress | None = None) -> Results:
     """Compute a case: crop water use by stand, latent flux and dew-point contribution by county.
 
     Parameters

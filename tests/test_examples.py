@@ -15,7 +15,7 @@ import pytest
 from etflux import humidity, reference, solar, stands, weather, workbook
 from etflux.case import TABLES, Case, Settings
 from etflux.outlines import EARTH_RADIUS_KM, area_and_centroid, read, shared_borders
-from etflux.run import run
+from etflux.run import run_case
 from etflux.variables import from_si, quantities
 
 FOLDER = Path(__file__).parents[1] / "station_examples"
@@ -406,7 +406,7 @@ def test_episode_is_humid_with_weak_wind(tables, filled):
 
 @pytest.fixture(scope="module")
 def stand_days(basin):
-    return run(_case(basin[0], basin[1])).stand
+    return run_case(_case(basin[0], basin[1])).stand
 
 
 def test_irrigated_corn_uses_500_to_700_mm_and_is_never_short(stand_days):

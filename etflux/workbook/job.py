@@ -45,7 +45,7 @@ def run_workbook(
     """
     from etflux.findings import ProblemsFound, has_errors
     from etflux.results import write_folder
-    from etflux.run import run
+    from etflux.run import run_case
     from etflux.workbook import checked
     from etflux.workbook.report import write_report
 
@@ -54,7 +54,7 @@ def run_workbook(
     case, findings = checked(path, progress=lambda step, share: tell("reading and checking", 0.2 * share))
     if case is None or has_errors(findings):
         raise ProblemsFound(findings)
-    results = run(case, findings, lambda step, share: tell(step, 0.2 + 0.4 * share))
+    results = run_case(case, findings, lambda step, share: tell(step, 0.2 + 0.4 * share))
     day = brief_day(results, on)
     tell("writing", 0.6)
     write_folder(
