@@ -226,7 +226,7 @@ def _mark_rows(units: pd.DataFrame, record: StationRecord, plants: canopy.Canopy
                         "mark": name,
                         "date": (record.dates[0] + whole).astype("datetime64[ns]"),
                         "basis": np.where(
-                            days[there] > last, "projected past the record", plants.basis["marks"][there]
+                            days[there] > last, "projected past the record", plants.basis_of(name)[there]
                         ),
                     }
                 )

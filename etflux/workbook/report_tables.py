@@ -25,7 +25,8 @@ if TYPE_CHECKING:
 MARK_WORDS = {
     "greenup": "Green-up", "planting": "Planting", "emergence": "Emergence", "cover10": "10 % ground cover",
     "v8": "Irrigation from", "full_cover": "Full cover", "late": "Late season", "maturity": "Maturity",
-    "harvest": "Harvest", "freeze": "First freeze", "end": "End of season",
+    "killed": "Killed by frost", "replant": "Replanted", "harvest": "Harvest",
+    "freeze": "First freeze", "end": "End of season",
 }  # fmt: skip
 MARK_NOTES = {
     "cover10": "Corn: V6, six leaves", "v8": "Corn: V8; others: as far into the season",
