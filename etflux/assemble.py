@@ -27,7 +27,8 @@ if TYPE_CHECKING:
     from etflux.weather import CountyWeather, StationRecord
 
 STATION_FILLED = (
-    "t_max_c", "t_min_c", "t_mean_c", "dew_point_c", "vapour_pressure_kpa", "rh_min_pct", "rs_mj_m2_d", "u2_m_s", "rain_mm",
+    "t_max_c", "t_min_c", "t_mean_c", "dew_point_c", "vapour_pressure_kpa", "rh_min_pct", "rs_mj_m2_d", "u2_m_s",
+    "rain_mm",
 )  # fmt: skip
 # What a day's "estimated input" counts, one share each; a pair counts as estimated when either is.
 INPUT_GROUPS = (("t_max_c", "t_min_c"), ("vapour_pressure_kpa",), ("rs_mj_m2_d",), ("u2_m_s",), ("rain_mm",))

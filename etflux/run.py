@@ -1,7 +1,7 @@
 """The chain, in order: weather, reference ET, stands, crops, soil water, counties, air.
 
-This is the only module that knows the order. Read :func:`run_case` from top to bottom and you have seen the whole job; what
-it calls is a science module's own function or a small assembly step of ``assemble``.
+This is the only module that knows the order. Read :func:`run_case` from top to bottom and you have seen the whole job;
+what it calls is a science module's own function or a small assembly step of ``assemble``.
 """
 
 from __future__ import annotations

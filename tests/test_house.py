@@ -17,7 +17,8 @@ PACKAGE = Path(etflux.__file__).parent
 # A module may import from rooms named before its own, never from later ones.
 ROOMS = [
     "__init__", "variables", "findings", "humidity", "solar", "reference", "case", "outlines", "weather",
-    "irrigation", "soilwater", "stands", "marks", "crops", "canopy", "counties", "column", "profiles", "wind", "airmass", "air_checks", "checks", "methods", "results", "assemble",
+    "irrigation", "soilwater", "stands", "marks", "crops", "canopy", "counties",
+    "column", "profiles", "cells", "wind", "airmass", "air_checks", "checks", "methods", "results", "assemble",
     "run", "workbook", "brief", "cli",
 ]  # fmt: skip
 

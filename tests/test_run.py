@@ -130,17 +130,18 @@ def test_netcdf_opens_as_it_was(written):
 
 def test_missing_rain_stops_the_season_and_says_so(basin):
     tables = dict(basin.tables)
-    weather = tables["weather"].copy()
-    weather.loc[weather["date"] == "2031-08-10", "rain_mm"] = np.nan
-    tables["weather"], tables["rain_gauges"] = weather, tables["rain_gauges"].iloc[:0]
+    weather, gauges = tables["weather"].copy(), tables["rain_gauges"]
+    weather.loc[weather["date"].between("2031-08-10", "2031-08-12"), "rain_mm"] = np.nan
+    tables["weather"] = weather
+    tables["rain_gauges"] = gauges[~gauges["date"].between("2031-08-08", "2031-08-13")].reset_index(drop=True)
     results = run_case(Case(basin.settings, tables))
-    assert {"rain-missing"} == {f.code for f in results.findings if f.table == "counties"}
+    assert {f.code for f in results.findings if f.table == "counties"} == {"rain-missing"}
     et = results.county["et_county_mm"]
-    assert np.isfinite(et.sel(date="2031-08-08")).all()  # a morning observer's blank on the 10th is the 9th's
-    assert np.isnan(et.sel(date=slice("2031-08-10", None))).all()
+    assert np.isfinite(et.sel(date="2031-08-08")).all()  # what a morning observer reads on the 10th fell on the 9th
+    assert np.isnan(et.sel(date=slice("2031-08-11", None))).all()
     dry = run_case(Case(with_settings(basin.settings, missing_rain="treat as 0"), tables))
     assert np.isfinite(dry.county["et_county_mm"]).all()
-    assert {"rain-treated-as-zero"} == {f.code for f in dry.findings if f.table == "counties"}
+    assert {f.code for f in dry.findings if f.table == "counties"} == {"rain-treated-as-zero"}
 
 
 def _command(*arguments, cwd):
