@@ -11,8 +11,6 @@ import json
 import math
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
-from functools import cache
-from importlib.resources import files
 from pathlib import Path
 from typing import Any
 
@@ -144,12 +142,14 @@ def _from_features(features: Iterable[Mapping[str, Any]], file_name: str) -> dic
 
 
 def _shapefile_features(path: Path) -> Iterable[Mapping[str, Any]]:
+    import struct
+
     import shapefile
 
     try:
         with shapefile.Reader(str(path)) as reader:
             return [row.__geo_interface__ for row in reader.iterShapeRecords()]
-    except (shapefile.ShapefileException, OSError, UnicodeDecodeError, ValueError) as error:
+    except (shapefile.ShapefileException, OSError, UnicodeDecodeError, ValueError, struct.error) as error:
         raise CannotRead(f"{path.name}: is not a readable shapefile (.shp with .dbf and .shx beside it).") from error
 
 
@@ -191,7 +191,7 @@ def area_and_centroid(outline: Outline) -> tuple[float, float, float]:
             km2, x, y = _ring_moments(ring)
             sign = math.copysign(1.0, km2) * (1.0 if position == 0 else -1.0)
             total, mx, my = total + sign * km2, mx + sign * x, my + sign * y
-    return total, math.degrees(math.asin(my / total)), math.degrees(mx / total)
+    return float(total), math.degrees(math.asin(my / total)), math.degrees(mx / total)
 
 
 def shared_borders(outlines: Mapping[str, Outline]) -> list[Border]:
@@ -224,12 +224,3 @@ def _border(first: str, second: str, start: np.ndarray, end: np.ndarray) -> Bord
     north = math.radians(end[1] - start[1]) * EARTH_RADIUS_KM
     length = math.hypot(east, north)
     return Border(first, second, length, (north / length, -east / length))
-
-
-@cache
-def us_counties() -> Mapping[str, Outline]:
-    """Outlines of the counties of the United States, by five-digit GEOID (``tables/us_counties.md`` has the source)."""
-    import gzip
-
-    packed = files("etflux.tables").joinpath("us_counties.topojson.gz").read_bytes()
-    return from_topojson(json.loads(gzip.decompress(packed)), "counties")

@@ -1,0 +1,120 @@
+"""County outlines: formats, measures, shared borders, and files that are none."""
+
+import json
+import math
+
+import numpy as np
+import pytest
+
+from etflux import outlines
+from etflux.findings import CannotRead
+from etflux.outlines import EARTH_RADIUS_KM, area_and_centroid, shared_borders
+
+
+def _square(west, south, size=1.0):
+    east, north = west + size, south + size
+    return [[west, south], [east, south], [east, north], [west, north], [west, south]]
+
+
+def _feature(county_id, *rings, **properties):
+    return {
+        "type": "Feature",
+        "properties": {"county_id": county_id, **properties},
+        "geometry": {"type": "Polygon", "coordinates": list(rings)},
+    }
+
+
+def _file(path, *features):
+    path.write_text(json.dumps({"type": "FeatureCollection", "features": list(features)}), encoding="utf-8")
+    return path
+
+
+def test_area_of_a_band_is_the_spherical_formula(tmp_path):
+    found = outlines.read(_file(tmp_path / "a.geojson", _feature("a", _square(-95.0, 41.0), name="Aldmoor")))["a"]
+    area, latitude, longitude = area_and_centroid(found)
+    exact = EARTH_RADIUS_KM**2 * math.radians(1.0) * (math.sin(math.radians(42.0)) - math.sin(math.radians(41.0)))
+    assert found.name == "Aldmoor"
+    assert area == pytest.approx(exact, rel=1e-9)
+    assert (latitude, longitude) == pytest.approx((41.5, -94.5), abs=0.01)
+
+
+def test_hole_is_left_out_and_ring_order_does_not_matter(tmp_path):
+    hole = _square(-94.75, 41.25, 0.5)
+    forward = outlines.read(_file(tmp_path / "f.geojson", _feature("a", _square(-95.0, 41.0), hole)))["a"]
+    back = outlines.read(_file(tmp_path / "b.geojson", _feature("a", _square(-95.0, 41.0)[::-1], hole[::-1])))["a"]
+    assert area_and_centroid(forward)[0] == pytest.approx(area_and_centroid(back)[0])
+    whole = outlines.read(_file(tmp_path / "w.geojson", _feature("a", _square(-95.0, 41.0))))["a"]
+    assert area_and_centroid(forward)[0] < 0.76 * area_and_centroid(whole)[0]
+
+
+def test_neighbours_share_a_border_and_its_normal_points_across(tmp_path):
+    found = outlines.read(
+        _file(tmp_path / "n.geojson", _feature("west", _square(-95.0, 41.0)), _feature("east", _square(-94.0, 41.0)))
+    )
+    (border,) = shared_borders(found)
+    across = np.array(border.normal) * (1.0 if border.first == "west" else -1.0)
+    assert {border.first, border.second} == {"west", "east"}
+    assert across == pytest.approx([1.0, 0.0], abs=1e-9)
+    assert border.length_km == pytest.approx(EARTH_RADIUS_KM * math.radians(1.0))
+
+
+def test_topojson_arcs_become_rings(tmp_path):
+    topology = {
+        "type": "Topology",
+        "transform": {"scale": [0.5, 0.5], "translate": [-95.0, 41.0]},
+        "objects": {"counties": {"type": "GeometryCollection", "geometries": [
+            {"type": "Polygon", "arcs": [[0, 1]], "id": "a", "properties": {"name": "Aldmoor"}},
+            {"type": "Polygon", "arcs": [[2, -2]], "id": "b", "properties": {}},
+        ]}},
+        "arcs": [
+            [[2, 2], [-2, 0], [0, -2], [2, 0]],
+            [[2, 0], [0, 2]],
+            [[2, 0], [2, 0], [0, 2], [-2, 0]],
+        ],
+    }  # fmt: skip
+    path = tmp_path / "t.topojson"
+    path.write_text(json.dumps(topology))
+    found = outlines.read(path)
+    assert area_and_centroid(found["a"])[1:] == pytest.approx((41.5, -94.5), abs=0.01)
+    (border,) = shared_borders(found)
+    assert {border.first, border.second} == {"a", "b"}
+
+
+def test_shapefile_is_read(tmp_path):
+    import shapefile
+
+    with shapefile.Writer(str(tmp_path / "s")) as writer:
+        writer.field("GEOID", "C")
+        writer.field("NAME", "C")
+        writer.poly([_square(-95.0, 41.0)[::-1]])
+        writer.record("97001", "Aldmoor")
+    found = outlines.read(tmp_path / "s.shp")
+    assert found["97001"].name == "Aldmoor"
+    assert area_and_centroid(found["97001"])[0] > 9000.0
+
+
+@pytest.mark.parametrize(
+    ("text", "message"),
+    [
+        ("not json", "is not JSON"),
+        ("[" * 100_000, "is not JSON"),
+        ("{}", "not a GeoJSON feature collection"),
+        (json.dumps({"type": "FeatureCollection", "features": []}), "has no polygons"),
+        (json.dumps({"type": "FeatureCollection", "features": [_feature("", _square(0, 0))]}), "has no id"),
+        (json.dumps({"type": "FeatureCollection", "features": [_feature("a", _square(500, 0))]}), "not in degrees"),
+        (json.dumps({"type": "FeatureCollection", "features": [_feature("a", [["x", 1]])]}), "broken coordinates"),
+    ],
+)
+def test_what_is_no_outline_is_said(text, message, tmp_path):
+    path = tmp_path / "bad.geojson"
+    path.write_text(text)
+    with pytest.raises(CannotRead, match=message):
+        outlines.read(path)
+
+
+def test_missing_file_and_broken_shapefile(tmp_path):
+    with pytest.raises(CannotRead, match="cannot be opened"):
+        outlines.read(tmp_path / "none.geojson")
+    (tmp_path / "bad.shp").write_bytes(b"nothing")
+    with pytest.raises(CannotRead, match="not a readable shapefile"):
+        outlines.read(tmp_path / "bad.shp")
