@@ -101,12 +101,12 @@ def pyranometer_findings(record: StationRecord) -> list[Finding]:
 
 
 def _drift(middle: np.ndarray, ratio: np.ndarray) -> tuple[float, float]:
-    """Change of the ratio over the record by a straight line, and its standard error."""
-    from scipy.stats import linregress
-
-    line = linregress(middle, ratio)
+    """Change of the ratio over the record by a straight line through it (least squares), and its standard error."""
+    x, y = middle - middle.mean(), ratio - ratio.mean()
+    slope = float(x @ y / (x @ x))
+    error = float(np.sqrt(((y - slope * x) ** 2).sum() / max(len(x) - 2, 1) / (x @ x)))
     span = float(middle[-1] - middle[0])
-    return float(line.slope) * span, float(line.stderr) * span
+    return slope * span, error * span
 
 
 def _vapour_pressure(record: StationRecord) -> np.ndarray:
