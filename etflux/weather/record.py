@@ -121,7 +121,8 @@ def arrange(case: Case) -> StationRecord:
     inside = (day >= 0) & (day <= count)
     rows, day, station = rows[inside], day[inside], position[rows[inside]]
     row_of = np.full((count + 1, len(ids)), -1)
-    row_of[day[::-1], station[::-1]] = rows[::-1]  # the first of two rows wins
+    _, first = np.unique(day * len(ids) + station, return_index=True)  # the first of two rows counts
+    row_of[day[first], station[first]] = rows[first]
 
     there = row_of >= 0
     values = {}
