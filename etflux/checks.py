@@ -82,7 +82,7 @@ def case_findings(case: Case, unread: Unread = frozenset()) -> list[Finding]:
     ]  # fmt: skip
     if len(case.table("weather")) and len(case.table("stations")):
         record = weather.arrange(_on_the_globe(case))
-        found += [*_season(case, record.dates), *_of_weather(case, record)]
+        found += [*_season(case, record.dates), *_of_weather(case, record, unread)]
         if not unread and not has_errors(found):
             found += _gaps(case, record, {finding.subject for finding in found if finding.code == WITHOUT})
     return [finding for finding in found if (finding.table, finding.row, finding.quantity) not in unread]
@@ -96,16 +96,18 @@ def _on_the_globe(case: Case) -> Case:
     return replace(case, tables={**case.tables, "stations": station})
 
 
-def _of_weather(case: Case, record: StationRecord) -> list[Finding]:
+def _of_weather(case: Case, record: StationRecord, unread: Unread) -> list[Finding]:
     """What the record says of itself, with the station's row; missing days only where every row found its place."""
+    whole = not any(table == "weather" and row is None for table, row, _ in unread)
     station, days = case.table("stations"), case.table("weather")
     ids = _texts(station, "station_id").tolist()
-    placed = days["date"].notna().all() and _texts(days, "station_id").isin(ids).all() and "" not in ids
+    placed = whole and days["date"].notna().all() and _texts(days, "station_id").isin(ids).all() and "" not in ids
     found = []
     for finding in weather.quality(record):
         if finding.code == WITHOUT:
             finding = replace(finding, row=ids.index(finding.value) if finding.value in ids else None)
-        if placed or finding.code not in (WITHOUT, "days-missing"):
+        lost = ("stations", finding.row, "weather_file") in unread
+        if finding.code not in (WITHOUT, "days-missing") or (placed and not lost):
             found.append(finding)
     return found
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 from dataclasses import replace
 from functools import partial
@@ -19,6 +20,7 @@ from etflux.workbook.rows import Block, frame, read_sheet
 from etflux.workbook.settings_sheet import read_settings
 from etflux.workbook.sheets import (
     CHOICES,
+    FREE_TEXT,
     READ_FIRST,
     SETTINGS,
     VERSION,
@@ -245,21 +247,29 @@ def _changed(
 ) -> list[Finding]:
     """Notes on rows of the package that the workbook has with other values; nothing on cells with faults."""
     key = sheet.columns[0].name
-    known = packaged.drop_duplicates(key).set_index(key)
+    row_of = {name: row for row, name in enumerate(packaged[key])}
+    known = [(row, row_of[name]) for row, name in enumerate(table[key]) if name in row_of]
     found = []
-    for row, name in enumerate(table[key]):
-        if name not in known.index:
+    for column in sheet.columns[1:]:
+        mine, theirs = table[column.name].tolist(), packaged[column.name].tolist()
+        if column.name in FREE_TEXT or all(_blank(value) for value in mine):
             continue
-        for column in sheet.columns[1:]:
-            if column.name in ("name", "source") or table[column.name].isna().all() or (row, column.name) in said:
+        for row, place in known:
+            if (row, column.name) in said or _alike(mine[row], theirs[place]):
                 continue
-            mine, theirs = table[column.name].iloc[row], known.loc[name, column.name]
-            same = (
-                np.isclose(mine, theirs, rtol=1e-6, equal_nan=True) if column.kind == "number" else mine == theirs
-            ) or (mine is None and theirs is None)
-            if not same:
-                detail = f"packaged: {'blank' if theirs is None or theirs != theirs else theirs}"
-                shown = None if mine is None or mine != mine else mine
-                found.append(Finding("packaged-row-changed", sheet.table, row, column.name, shown,
-                                     subject_of(sheet.table, table, row), detail))  # fmt: skip
+            detail = f"packaged: {'blank' if _blank(theirs[place]) else theirs[place]}"
+            shown = None if _blank(mine[row]) else mine[row]
+            about = subject_of(sheet.table, table, row)
+            found.append(Finding("packaged-row-changed", sheet.table, row, column.name, shown, about, detail))
     return found
+
+
+def _blank(value: Any) -> bool:
+    return value is None or value != value
+
+
+def _alike(mine: Any, theirs: Any) -> bool:
+    """Whether two cells say the same, numbers as far as a change of units leaves them."""
+    if _blank(mine) or _blank(theirs):
+        return _blank(mine) and _blank(theirs)
+    return math.isclose(mine, theirs, rel_tol=1e-6) if isinstance(mine, float) else bool(mine == theirs)

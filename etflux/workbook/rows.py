@@ -124,7 +124,8 @@ def take_headings(block: Block, number: int, headings: Headings) -> None:
             if (place, code, value, detail) != other[0]:
                 continue
             detail += f"; and {len(other) - 1} more headings" if len(other) > 1 else ""
-        where = Origin(origin.name, columns={"": place or 1}, is_sheet=origin.is_sheet).place(number, None)
+        texts = {"": str(value)} if place else {}
+        where = Origin(origin.name, columns={"": place or 1}, texts=texts, is_sheet=origin.is_sheet).place(number, "")
         block.say(code, None, at.get(place or 0), value, detail, where)
 
 

@@ -170,6 +170,8 @@ WORDS: Mapping[tuple[str, str], tuple[str, str]] = {
     ("covers", "kcb_mid"): ("", "At full cover."),
     ("covers", "kcb_end"): ("", "At maturity, or when growth ends."),
     ("covers", "kcb_dormant"): ("", "Outside the season; 0 for annual covers."),
+    ("covers", "height_max_m"): ("", "At full cover."),
+    ("covers", "root_min_m"): ("", "When it comes up, and outside the season."),
     ("covers", "root_max_rainfed_m"): ("", "Of stands without irrigation."),
     ("covers", "root_max_irrigated_m"): ("", "Of irrigated stands."),
     ("stands", "stand_id"): ("", "One cover, soil and water regime in one county."),

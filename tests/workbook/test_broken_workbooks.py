@@ -563,7 +563,7 @@ BROKEN = [
     Broken(
         "setting unknown",
         add_row("Settings", B="Colour of the barn", C="red"),
-        {("Settings", "B68", "setting-unknown")},
+        {("Settings", "Colour of the barn", "setting-unknown")},
     ),
     Broken("setting out of range", setting("Albedo", 0.9), {("Settings", "Albedo", "range")}),
     Broken("setting as text", setting("Albedo", "0,23"), {("Settings", "Albedo", "number-as-text")}),
@@ -661,13 +661,15 @@ BROKEN = [
 
 def found_in(path, book):
     """What the check finds: (sheet, cell, code)."""
-    labels = {f"C{row}": book["Settings"].cell(row, 2).value for row in range(4, 100)} if "Settings" in book else {}
+    page = book["Settings"] if "Settings" in book else None
     found = []
     for finding in check(path):
         sheet, _, cell = finding.place.partition("!")
         if sheet == path.name:
             sheet = "FILE"
-        found.append((sheet, labels.get(cell) or cell if sheet == "Settings" else cell, finding.code))
+        if sheet == "Settings" and cell:
+            cell = page.cell(page[cell].row, 2).value
+        found.append((sheet, cell, finding.code))
         assert finding.sentence()
         assert finding.record()["place"] == finding.place
     return found
