@@ -30,8 +30,9 @@ HOURS = np.arange(25.0)  # edges of the day's hours, local solar time
 # 60 kg m-2 are about 50 m; 45 of them reach about 2.5 km, the wider ones above end near 5.6 km.
 LAYER_MASS = np.concatenate([np.full(45, 60.0), np.full(8, 320.0)])
 EDGES = np.concatenate([[0.0], np.cumsum(LAYER_MASS)])
+LEAST_ENTRAINMENT = 0.01
 NEWTON_STEPS = 60
-MASS_PRECISION = 1e-10  # kg m-2
+MASS_PRECISION = 1e-9  # kg m-2
 
 
 def virtual_theta(theta_k: ArrayLike, q_kg_kg: ArrayLike) -> np.ndarray:
@@ -130,7 +131,7 @@ def heat_need(theta_v_k: np.ndarray, entrainment: ArrayLike, mass: ArrayLike = L
     theta_v_k : ndarray, shape (county, layer)
         Virtual potential temperature of the morning, layer means, not falling with height. [K]
     entrainment : array_like, scalar or shape (county,)
-        A, 0 to 0.4; with 0 the need is G.
+        A, 0 to 0.4; with 0 (and below 0.01) the need is G.
     mass : array_like, shape (layer,)
         [kg m-2]
 
@@ -154,13 +155,23 @@ def heat_need(theta_v_k: np.ndarray, entrainment: ArrayLike, mass: ArrayLike = L
     dm = np.asarray(mass, float)
     edge = np.concatenate([[0.0], np.cumsum(dm)])
     share = np.broadcast_to(np.asarray(entrainment, float), len(theta_v_k))
+    share = np.where(share < LEAST_ENTRAINMENT, 0.0, share)
     slope = _slopes(theta_v_k, dm)
     above_first = theta_v_k - theta_v_k[:, :1]
     heat_below = np.cumsum(above_first * dm, axis=1) - above_first * dm
     gap = edge[:-1] * (above_first - 0.5 * slope * dm) - heat_below
     need = np.zeros((len(slope), len(edge)))
-    for k in range(len(dm)):
-        need[:, k + 1] = _need_within(edge[k], edge[k + 1], need[:, k], gap[:, k], slope[:, k], share)
+    with_share = share > 0.0
+    # Integral of G d(m^(1/A)) layer by layer, masses scaled by the topmost so that high powers stay numbers.
+    top = edge[-1]
+    power = 1.0 / np.where(with_share, share, 1.0)
+    power = power[:1, None] if (power == power[:1]).all() else power[:, None]
+    scaled = (edge / top) ** power
+    base = gap - 0.5 * slope * edge[:-1] ** 2
+    layer = base * np.diff(scaled) + 0.5 * slope * power / (power + 2.0) * top**2 * np.diff(scaled * (edge / top) ** 2)
+    need[:, 1:] = np.cumsum(layer, axis=1) / scaled[:, 1:]
+    encroached = base + 0.5 * slope * edge[1:] ** 2
+    need[:, 1:] = np.where(with_share[:, None], need[:, 1:], encroached)
     return HeatNeed(edge, np.maximum.accumulate(need, axis=1), gap, slope, share)
 
 
@@ -170,17 +181,6 @@ def _slopes(values: np.ndarray, dm: np.ndarray) -> np.ndarray:
     return np.minimum(
         np.concatenate([between[:, :1], between], axis=1), np.concatenate([between, between[:, -1:]], axis=1)
     )
-
-
-def _need_within(
-    below: ArrayLike, mass: ArrayLike, need: np.ndarray, gap: np.ndarray, slope: np.ndarray, entrainment: np.ndarray
-) -> np.ndarray:
-    """Heat need at `mass` inside the layer that starts at `below`."""
-    a, m = np.asarray(below, float), np.maximum(mass, 1e-12)
-    power = 1.0 / np.maximum(entrainment, 1e-9)
-    shrink = (a / m) ** power
-    base = gap - 0.5 * slope * a**2
-    return shrink * need + base * (1.0 - shrink) + 0.5 * slope / (1.0 + 2.0 * entrainment) * (m**2 - a**2 * shrink)
 
 
 def mixed_mass(found: HeatNeed, supply: np.ndarray) -> np.ndarray:
@@ -198,45 +198,57 @@ def mixed_mass(found: HeatNeed, supply: np.ndarray) -> np.ndarray:
         At most the top of the layers; NaN where the supply or the profile is. [kg m-2]
     """
     edge, need = found.edge, found.need
+    rows, layers = found.slope.shape
     wanted = np.maximum(supply, 0.0)
-    upper = np.clip((need[:, None, :] < wanted[:, :, None]).sum(axis=2), 1, len(edge) - 1)
-    start, end = edge[upper - 1], edge[upper]
-    need_below = np.take_along_axis(need, upper - 1, axis=1)
-    need_above = np.take_along_axis(need, upper, axis=1)
-    gap, slope = (np.take_along_axis(values, upper - 1, axis=1) for values in (found.gap, found.slope))
+    upper = np.clip((need[:, None, :] < wanted[:, :, None]).sum(axis=2), 1, layers)
+    row = np.arange(rows)[:, None]
+    start, end, gap, slope = edge[upper - 1], edge[upper], found.gap[row, upper - 1], found.slope[row, upper - 1]
     share = found.entrainment[:, None]
     with np.errstate(invalid="ignore", divide="ignore"):
-        guess = (wanted - need_below) / (need_above - need_below)
-    low, high = start.copy(), end.copy()
-    middle = start + np.where(need_above > need_below, np.clip(guess, 0.0, 1.0), 0.5) * (end - start)
-    for _ in range(NEWTON_STEPS):  # kept between two bounds that close in
-        over = _need_within(start, middle, need_below, gap, slope, share) - wanted
-        low, high = np.where(over < 0.0, middle, low), np.where(over < 0.0, high, middle)
-        rate = _need_rate(start, middle, over + wanted, gap, slope, share)
-        with np.errstate(invalid="ignore", divide="ignore"):
-            stepped = middle - over / rate
-        inside = (stepped > low) & (stepped < high)
-        before, middle = middle, np.where(inside, stepped, 0.5 * (low + high))
-        if np.nanmax(np.abs(middle - before), initial=0.0) < MASS_PRECISION:
-            break
-    mixed = np.where(wanted >= need[:, -1:], edge[-1], middle)
-    mixed = np.where(wanted > 0.0, mixed, 0.0)
+        # Without entrainment the supply is the gap; below the gap's jump at an edge the mixed air ends there.
+        mixed = np.sqrt(start**2 + 2.0 * np.maximum(wanted - gap, 0.0) / slope)
+    mixed = np.where(wanted > gap, np.clip(mixed, start, end), start)
+    inner = (share > 0.0) & (wanted > need[row, upper - 1]) & (wanted < need[row, upper])
+    pick = np.nonzero(inner)
+    if len(pick[0]):
+        row_picked, layer = pick[0], upper[pick] - 1
+        mixed[pick] = _inside_layer(
+            wanted[pick], start[pick], end[pick], need[row_picked, layer], need[row_picked, layer + 1], gap[pick],
+            slope[pick], found.entrainment[row_picked],
+        )  # fmt: skip
+    mixed = np.where(wanted >= need[:, -1:], edge[-1], np.where(wanted > 0.0, mixed, 0.0))
     return np.where(np.isnan(supply) | np.isnan(need[:, -1:]), np.nan, mixed)
 
 
-def _need_rate(
-    below: np.ndarray, mass: np.ndarray, need: np.ndarray, gap: np.ndarray, slope: np.ndarray, entrainment: np.ndarray
-) -> np.ndarray:
-    """Derivative of the heat need by mass: the jump over A, or without entrainment the slope times the mass."""
-    gap_here = gap + 0.5 * slope * (mass**2 - below**2)
-    with np.errstate(invalid="ignore", divide="ignore"):
-        return np.where(entrainment > 0.0, (gap_here - need) / (entrainment * mass), slope * mass)
+def _inside_layer(
+    wanted: np.ndarray, start: np.ndarray, end: np.ndarray, need: np.ndarray, need_above: np.ndarray, gap: np.ndarray,
+    slope: np.ndarray, entrainment: np.ndarray,
+) -> np.ndarray:  # fmt: skip
+    """Mass within a layer at which the need is the wanted one: Newton's steps, kept between two bounds."""
+    low, high = start.copy(), end.copy()
+    part = (wanted - need) / (need_above - need)
+    mass = np.sqrt(start**2 + part * (end**2 - start**2))
+    base, power = gap - 0.5 * slope * start**2, 1.0 / entrainment
+    curve = 0.5 * slope / (1.0 + 2.0 * entrainment)
+    for _ in range(NEWTON_STEPS):
+        shrink = (start / mass) ** power
+        here = shrink * need + base * (1.0 - shrink) + curve * (mass**2 - start**2 * shrink)
+        below = here < wanted
+        low, high = np.where(below, mass, low), np.where(below, high, mass)
+        rate = (base + 0.5 * slope * mass**2 - here) / (entrainment * mass)  # jump over A
+        with np.errstate(invalid="ignore", divide="ignore"):
+            stepped = mass - (here - wanted) / rate
+        inside = (stepped >= low) & (stepped <= high)
+        before, mass = mass, np.where(inside, stepped, 0.5 * (low + high))
+        if np.abs(mass - before).max() < MASS_PRECISION:
+            break
+    return mass
 
 
 def mixing_weights(mixed: np.ndarray, edges: ArrayLike = EDGES) -> np.ndarray:
     """Mass of each layer that lies within the mixed air, shape (county, layer). [kg m-2]"""
     edge = np.asarray(edges, float)
-    return np.clip(mixed[:, None] - edge[:-1], 0.0, np.diff(edge))
+    return np.minimum(np.maximum(mixed[:, None] - edge[:-1], 0.0), np.diff(edge))
 
 
 def mix(
