@@ -17,7 +17,6 @@ from numpy.typing import ArrayLike
 KC_MIN = 0.15  # [FAO56] eq. 76
 ADJUST_FROM = 0.45  # [FAO56] p. 136
 LEAST_HEIGHT_M = 0.1
-DEAD_COVER_SHARE = 0.5  # standing dead corn keeps half of its cover: common practice, no source
 CUT_BACK_DAYS = 5  # [FAO56] table 11, alfalfa, other cuttings
 
 OBSERVED_MARKS = {

@@ -130,6 +130,7 @@ ROWS = [
     row(crops.climate_adjustment, u2_m_s=2.5, rh_min_pct=50.0, height_m=2.0),
     row(crops.kc_upper_limit, kcb=0.9, u2_m_s=2.5, rh_min_pct=50.0, height_m=2.0),
     row(crops.ground_cover_from_kcb, kcb=0.9, kc_max=1.2, height_m=1.5),
+    row(crops.growth_share, kcb=0.6, kcb_ini=0.15, kcb_mid=1.1),
     row(crops.kcb_from_leaf_area, kcb_full=1.1, leaf_area=2.0),
     row(crops.kcb_from_canopy_cover, kcb_full=1.1, cover_share=0.4, height_m=0.5),
     row(marks.heat_units, t_max_c=29.0, t_min_c=16.0),

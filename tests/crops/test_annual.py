@@ -209,6 +209,14 @@ def test_normals_stand_in_while_the_stage_is_young(make):
     assert grown.canopy.provisional[-1, 0] & BITS["climate_adjustment"]
 
 
+def test_weather_after_the_harvest_is_not_the_stage_s(make):
+    """Cut in mid-season; gales afterwards leave Kcb,mid as it was."""
+    row = make.stand(planting_date=PLANTED, harvest_date="2031-07-15")
+    gales = np.where(np.arange(365) >= 195, 6.0, 2.0)  # from 15 July
+    grown = make.grow(make.case(row), make.record(u2_m_s=gales))
+    assert grown.canopy.kcb[make.day(grown.record, "2031-07-10"), 0] == pytest.approx(1.15)
+
+
 def test_own_covers_may_refuse_the_adjustment(make):
     """FAO-56 p. 136: local values need none."""
     from etflux.stands import packaged
@@ -239,6 +247,7 @@ def test_a_finished_season_has_no_provisional_day(make):
         (130, {}),  # emerged: nothing can move
         (160, {"climate_adjustment": "cover10", "marks": "cover10"}),
         (190, {"climate_adjustment": "cover10"}),  # at full cover only the stage's mean is open
+        (220, {}),  # the last day of the middle stage
         (230, {"climate_adjustment": "late", "marks": "late"}),
         (250, {}),
     ],
@@ -285,6 +294,23 @@ def test_frost_kills_from_mid_season_on(make):
     assert (grown.canopy.kcb[day : day + 14, 0] == 0.15).all()
     assert (grown.canopy.stage[day : day + 14, 0] == Stage.MATURE).all()
     assert grown.findings == []
+
+
+def test_a_crop_killed_on_the_day_of_a_stage_did_not_reach_it(make):
+    record = weather_with(make, "t_min_c", -3.0, "2031-08-09", 16.0)  # day 220, begin dent
+    grown = make.grow(make.case(make.stand(planting_date=PLANTED)), record)
+    assert grown.canopy.marks["killed"][0] == 220.0
+    assert np.isnan(grown.canopy.marks["late"][0])
+
+
+def test_a_killed_crop_is_not_provisional_any_more(make):
+    """Killed while ripening, the record ends before the day on which it would have been ripe."""
+    t_min = np.full(240, 16.0)
+    t_min[230] = -3.0
+    grown = make.grow(make.case(make.stand(planting_date=PLANTED)), make.record(days=240, t_min_c=t_min))
+    bits = grown.canopy.provisional[:, 0]
+    assert (bits[220:230] & BITS["marks"]).all()
+    assert not bits[230:].any()
 
 
 @pytest.mark.parametrize(
@@ -395,6 +421,15 @@ def test_roots_reach_their_depth_when_the_climate_lowers_kcb(make):
     grown = make.grow(make.case(make.stand(planting_date=PLANTED)), make.record(u2_m_s=1.0, rh_min_pct=75.0))
     assert grown.canopy.kcb.max() < 1.05
     assert grown.canopy.root_depth_m.max() == pytest.approx(1.7)
+    assert grown.canopy.plant_height_m.max() == pytest.approx(2.0)
+
+
+def test_height_stays_below_the_greatest_where_kcb_ends_above_its_middle(make):
+    from etflux.stands import packaged
+
+    row = packaged("covers").set_index("cover_id").loc["corn"].to_dict() | {"cover_id": "ours", "kcb_end": 1.30}
+    grown = make.grow(make.case(make.stand(cover_id="ours", planting_date=PLANTED), covers=[row]))
+    assert grown.canopy.kcb.max() == pytest.approx(1.30)
     assert grown.canopy.plant_height_m.max() == pytest.approx(2.0)
 
 

@@ -101,8 +101,9 @@ def test_late_soybean_hurries_through_all_stages(make, latitude, planted, shorte
 
 
 def test_soybean_by_heat_units(make):
-    settings = {"soybean_marks": "heat units"}
-    grown = make.grow(make.case(make.stand(cover_id="soybean", planting_date="2031-05-01"), settings=settings))
+    """A corn hybrid's requirement, entered by mistake, does not scale them."""
+    row = make.stand(cover_id="soybean", planting_date="2031-05-01", hybrid_heat_units=1200.0)
+    grown = make.grow(make.case(row, settings={"soybean_marks": "heat units"}))
     table = packaged("heat_units").set_index(["cover_id", "mark"])["heat_units_f"]
     assert after_planting(grown, "full_cover") == np.ceil(table["soybean", "full_cover"] / 1.8 / PER_DAY)
 

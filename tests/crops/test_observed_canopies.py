@@ -47,6 +47,13 @@ def test_a_thin_stand_at_full_cover_stays_thin_in_proportion(make):
     assert grown.canopy.ground_cover[day, 0] < plain.canopy.ground_cover[day, 0] - 0.2
 
 
+def test_measured_on_the_day_of_full_cover_counts_as_grown(make):
+    day = 173  # 53 days after planting
+    grown, plain = pair(make, ("2031-06-23", "canopy cover", 30.0))
+    assert plain.canopy.marks["full_cover"][0] == day
+    assert grown.canopy.kcb[day + 10, 0] == pytest.approx(0.75)
+
+
 def test_between_two_measurements_the_difference_runs_linearly(make):
     first, second = "2031-06-08", "2031-06-18"
     grown, plain = pair(make, (first, "canopy cover", 20.0), (second, "canopy cover", 50.0))

@@ -52,8 +52,9 @@ def test_units_are_sorted_by_county_and_named_once(make):
     assert (units.loc[units["kind"] == "rest", "stand_row"] == -1).all()
 
 
-def test_stands_that_fill_the_county_leave_no_rest(make):
-    units = make.expand(make.case(corn(area_km2=1000.0)))
+@pytest.mark.parametrize("area", [1000.0, 1000.0 - 1e-8])
+def test_stands_that_fill_the_county_leave_no_rest(make, area):
+    units = make.expand(make.case(corn(area_km2=area)))
     assert list(units["kind"]) == ["stand"]
 
 
