@@ -15,7 +15,7 @@ import etflux
 from etflux import assemble, counties, humidity, workbook
 from etflux.case import Case, with_settings
 from etflux.run import run_case
-from etflux.workbook.job import run_workbook
+from etflux.workbook.job import moved_days, run_workbook
 
 EXAMPLES = Path(__file__).parents[1] / "station_examples"
 BASIN, COUNTY = EXAMPLES / "harrowbend.xlsx", EXAMPLES / "tallgrove_us.xlsx"
@@ -198,3 +198,17 @@ def test_county_sums_want_sorted_units():
 
 def test_public_names_are_the_promised_ones():
     assert {"run_workbook", "run_case", "Case", "Results", "eto_fao56", "check"} <= set(etflux.__all__)
+
+
+def test_rerun_lists_the_days_that_moved(tmp_path):
+    folder = tmp_path / "out"
+    first = run_workbook(COUNTY, output=folder)
+    assert not (folder / "moved.csv").exists()
+    again = run_workbook(COUNTY, output=folder)
+    assert len(pd.read_csv(folder / "moved.csv")) == 0
+    assert "days-moved" not in {finding.code for finding in again.findings}
+    case, findings = workbook.checked(COUNTY)
+    wetter = run_case(Case(with_settings(case.settings, residue_no_till_pct=0.0), case.tables), findings)
+    moved = moved_days(wetter, folder)
+    changed = np.abs(wetter.stand["et_mm"] - first.stand["et_mm"]) > 0.2
+    assert len(moved) == int(changed.sum()) > 10

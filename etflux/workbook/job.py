@@ -4,13 +4,19 @@ from __future__ import annotations
 
 import datetime as dt
 from collections.abc import Callable
+from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
+    import pandas as pd
+
+    from etflux.findings import Finding
     from etflux.results import Results
 
     Progress = Callable[[str, float], None]
+
+MOVED = "moved.csv"  # days that an earlier run in the same folder gave otherwise
 
 
 def run_workbook(
@@ -56,14 +62,48 @@ def run_workbook(
         raise ProblemsFound(findings)
     results = run_case(case, findings, lambda step, share: tell(step, 0.2 + 0.4 * share))
     day = brief_day(results, on)
+    folder = results_folder(path, output)
+    moved = moved_days(results, folder)
+    if moved is not None and len(moved):
+        results = replace(results, findings=[*results.findings, _moved_note(moved, results.settings["moved_et_mm"])])
     tell("writing", 0.6)
     write_folder(
         results,
-        results_folder(path, output),
+        folder,
         workbook_writer=lambda given, where: write_report(given, where, on=day),
-        progress=lambda step, share: tell(f"writing {step}", 0.6 + 0.4 * share),
+        progress=lambda step, share: tell(step, 0.6 + 0.4 * share),
+        others=None if moved is None else {MOVED: lambda given, where: moved.to_csv(where, index=False)},
     )
     return results
+
+
+def moved_days(results: Results, folder: Path) -> pd.DataFrame | None:
+    """Days whose crop water use moved since the earlier run in a folder by more than the setting says.
+
+    Stage means and projected marks make the last weeks of an open season provisional; this lists what came of them.
+
+    Returns
+    -------
+    DataFrame or None
+        date, unit_id, et_before_mm, et_mm; None where the folder holds no complete run.
+    """
+    from etflux.results import folder_state, read_tables
+
+    if not folder_state(folder).complete or not (folder / "stand_daily.csv").exists():
+        return None
+    keys = ["date", "unit_id"]
+    before = read_tables(folder, ["stand_daily"])["stand_daily"][[*keys, "et_mm"]]
+    both = results.table("stand_daily")[[*keys, "et_mm"]].merge(before, on=keys, suffixes=("", "_before"))
+    far = (both["et_mm"] - both["et_mm_before"]).abs() > results.settings["moved_et_mm"]
+    return both[far].rename(columns={"et_mm_before": "et_before_mm"})[[*keys, "et_before_mm", "et_mm"]]
+
+
+def _moved_note(moved: pd.DataFrame, limit: float) -> Finding:
+    from etflux.findings import Finding
+
+    first, last = str(moved["date"].min())[:10], str(moved["date"].max())[:10]
+    detail = f"{len(moved)} stand-days of {moved['unit_id'].nunique()} stands by over {limit:g} mm, {first} to {last}"
+    return Finding("days-moved", "stands", detail=detail)
 
 
 def results_folder(path: Path | str, output: Path | str | None = None) -> Path:
