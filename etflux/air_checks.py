@@ -106,7 +106,7 @@ def _levels(rows: pd.DataFrame, about: str) -> list[Finding]:
     if len(rows) < LEAST_LEVELS or (by_height and np.nanmax(height, initial=0.0) < LEAST_TOP_M):
         first = int(rows.index[0])
         found.append(Finding("profile-short", "profiles", first, "site_id", None, about, f"{len(rows)} levels"))
-    if by_height and len(rows) > 1 and np.nanmax(t) <= WARMEST_C:
+    if by_height and len(rows) > 1 and np.nanmax(t, initial=-99.0) <= WARMEST_C:
         with np.errstate(invalid="ignore", divide="ignore"):
             fall = -np.diff(t, prepend=np.nan) / np.diff(height, prepend=np.nan) * 1000.0
         steep = (fall > STEEPEST_FALL_K_KM) & (np.diff(height, prepend=np.nan) > 50.0)

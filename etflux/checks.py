@@ -89,11 +89,26 @@ def case_findings(case: Case, unread: Unread = frozenset()) -> list[Finding]:
 
 
 def _on_the_globe(case: Case) -> Case:
-    """Return the case with impossible latitudes blank: nothing can be said of the sun there."""
-    station, limits = case.table("stations"), quantities()["latitude_deg"]
-    latitude = station["latitude_deg"].astype(float)
-    station = station.assign(latitude_deg=latitude.where(latitude.between(limits.low, limits.high)))
-    return replace(case, tables={**case.tables, "stations": station})
+    """Return the case with impossible places of stations blank: nothing can be said of the sun and air there."""
+    station = case.table("stations")
+    possible = {}
+    for name in ("latitude_deg", "longitude_deg", "elevation_m", "wind_height_m", "utc_offset_h"):
+        if name in station:
+            values, limits = station[name].astype(float), quantities()[name]
+            possible[name] = values.where(values.between(limits.low, limits.high))
+    return replace(case, tables={**case.tables, "stations": station.assign(**possible)})
+
+
+def _at_reading(days: pd.DataFrame, finding: Finding) -> Finding:
+    """Return a finding with the row that holds its value: at morning observers the next day's reading."""
+    if finding.row is None or finding.quantity not in days or not isinstance(finding.value, float):
+        return finding
+    if days[finding.quantity].iloc[finding.row] == finding.value:
+        return finding
+    station, date = days["station_id"].iloc[finding.row], days["date"].iloc[finding.row]
+    rows = _rows((days["station_id"] == station) & (days["date"] == date + np.timedelta64(1, "D")))
+    found = [row for row in rows if days[finding.quantity].iloc[row] == finding.value]
+    return replace(finding, row=found[0]) if found else finding
 
 
 def _of_weather(case: Case, record: StationRecord, unread: Unread) -> list[Finding]:
@@ -108,7 +123,7 @@ def _of_weather(case: Case, record: StationRecord, unread: Unread) -> list[Findi
             finding = replace(finding, row=ids.index(finding.value) if finding.value in ids else None)
         lost = ("stations", finding.row, "weather_file") in unread
         if finding.code not in (WITHOUT, "days-missing") or (placed and not lost):
-            found.append(finding)
+            found.append(_at_reading(days, finding))
     return found
 
 

@@ -6,7 +6,7 @@ from dataclasses import dataclass, field, replace
 
 from etflux.findings import Finding
 from etflux.variables import convert, quantities
-from etflux.workbook.cells import letters
+from etflux.workbook.sheet_xml import letters
 
 
 @dataclass

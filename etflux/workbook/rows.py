@@ -11,9 +11,10 @@ import numpy as np
 
 from etflux.findings import Finding, rules
 from etflux.variables import to_si
-from etflux.workbook.cells import Book, Cell, position
+from etflux.workbook.cells import Book
 from etflux.workbook.headings import Headings, match, recognised
 from etflux.workbook.places import Origin
+from etflux.workbook.sheet_xml import Cell, position
 from etflux.workbook.sheets import Column, Sheet
 from etflux.workbook.values import TAKE
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from functools import cache
 from itertools import groupby
 from pathlib import Path
 from typing import Any
@@ -9,10 +10,11 @@ from typing import Any
 from etflux.case import Settings
 from etflux.findings import Finding
 from etflux.variables import Setting, convert, settings_table, units
-from etflux.workbook.cells import Book, Cell
+from etflux.workbook.cells import Book
 from etflux.workbook.headings import nearest, plain, unit_of
 from etflux.workbook.places import Places
 from etflux.workbook.rows import as_shown
+from etflux.workbook.sheet_xml import Cell
 from etflux.workbook.sheets import DATE_SETTINGS, Column
 from etflux.workbook.values import TAKE
 from etflux.workbook.weather_files import Trouble, beside
@@ -41,36 +43,30 @@ def read_settings(book: Book, title: str, folder: Path, places: Places) -> tuple
         Unit system.
     findings : list of Finding
     """
-    findings: list[Finding] = []
     rows = [(number, list(cells)) for number, cells in groupby(book.cells(title), key=lambda cell: cell.row)]
     head = next(((number, cells) for number, cells in rows if {"setting", "value"} <= _words(cells)), None)
     if head is None:
-        findings.append(Finding("headings-missing", "settings", detail="Setting, Value", place=title))
-        return Settings(), "", findings
+        missing = Finding("headings-missing", "settings", detail="Setting, Value", place=title)
+        return Settings(), "", [missing]
     at = {plain(cell.value): cell.column for cell in head[1]}
-    known = {plain(row.label): row for row in settings_table().values()} | {
-        plain(row.name): row for row in settings_table().values()
-    }
     values: dict[str, Any] = {}
+    findings: list[Finding] = []
     for number, cells in rows:
+        if number <= head[0]:
+            continue
         by_column = {cell.column: cell for cell in cells}
         name, value, unit = (by_column.get(at.get(word, 0)) for word in ("setting", "value", "unit"))
-        if number <= head[0] or name is None:
-            if number > head[0] and value is not None:
-                findings.append(_finding("setting-unknown", "", None, "", f"{title}!{value.address}"))
-            continue
-        setting = known.get(plain(name.value))
+        setting = _known().get(plain(name.value)) if name else None
         if setting is None:
             if value is not None:
-                close = nearest(str(name.value), [row.label for row in settings_table().values()])
-                findings.append(_finding("setting-unknown", "", name.value, close, f"{title}!{name.address}"))
+                findings.append(_unknown(name or value, title, named=name is not None))
             continue
         where = f"{title}!{Cell(number, at['value'], None, 'blank').address}"
         if value is None:
             places.settings.setdefault(setting.name, where)
             continue
         if setting.name in values:
-            findings.append(_finding("setting-twice", setting.name, name.value, "", where))
+            findings.append(_finding("setting-twice", setting.name, setting.label, "", where))
             continue
         places.settings[setting.name] = where
         taken, code, detail = _taken(setting, value, unit, book.epoch_1904, folder)
@@ -80,6 +76,18 @@ def read_settings(book: Book, title: str, folder: Path, places: Places) -> tuple
             values[setting.name] = taken
     settings = Settings(**values)
     return settings, settings.units, findings
+
+
+@cache
+def _known() -> dict[str, Setting]:
+    """Settings by label and by name."""
+    rows = settings_table().values()
+    return {plain(row.label): row for row in rows} | {plain(row.name): row for row in rows}
+
+
+def _unknown(cell: Cell, title: str, named: bool) -> Finding:
+    close = nearest(str(cell.value), [row.label for row in settings_table().values()]) if named else ""
+    return _finding("setting-unknown", "", as_shown(cell) if named else None, close, f"{title}!{cell.address}")
 
 
 def _words(cells: list[Cell]) -> set[str]:

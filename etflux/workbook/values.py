@@ -11,8 +11,8 @@ import re
 from collections.abc import Callable, Mapping
 from typing import Any, NamedTuple
 
-from etflux.workbook.cells import Cell, from_serial
 from etflux.workbook.headings import nearest, plain
+from etflux.workbook.sheet_xml import Cell, from_serial
 from etflux.workbook.sheets import FREE_TEXT, Column
 
 

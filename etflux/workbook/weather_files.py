@@ -10,10 +10,10 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 from pathlib import Path, PurePosixPath, PureWindowsPath
 
-from etflux.workbook.cells import Cell
 from etflux.workbook.headings import match, nearest, recognised
 from etflux.workbook.places import Origin
 from etflux.workbook.rows import Block, Row, find_headings, read_rows, say_blank, take_headings
+from etflux.workbook.sheet_xml import Cell
 from etflux.workbook.sheets import sheet_of
 
 LARGEST_BYTES = 20_000_000

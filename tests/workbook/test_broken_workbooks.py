@@ -661,7 +661,7 @@ BROKEN = [
 
 def found_in(path, book):
     """What the check finds: (sheet, cell, code)."""
-    page = book["Settings"] if "Settings" in book else None
+    page = {page.title: page for page in book}.get("Settings")
     found = []
     for finding in check(path):
         sheet, _, cell = finding.place.partition("!")

@@ -1,7 +1,9 @@
 """Files that are not workbooks, are damaged, or are made to hurt: one sentence with a remedy, quickly."""
 
+import datetime as dt
 import hashlib
 import io
+import random
 import re
 import shutil
 import subprocess
@@ -289,3 +291,58 @@ def test_what_libreoffice_saves_again_is_read_the_same(good_path, tables, tmp_pa
     ours = read(good_path)[0]
     for name in tables:
         pd.testing.assert_frame_equal(case.table(name), ours.table(name))
+
+
+@pytest.mark.parametrize("seed", range(12))
+def test_damaged_bytes_never_end_in_a_traceback(seed, bare_bytes, tmp_path):
+    """Bytes changed at random, in the archive or within its members: findings, or one sentence."""
+    rng = random.Random(seed)
+    if seed % 2:
+        content = bytearray(bare_bytes)
+        for _ in range(rng.choice([1, 3, 10])):
+            content[rng.randrange(len(content))] = rng.randrange(256)
+        content = bytes(content)
+    else:
+        junk = [b"<c/>", b'"', b'<row r="3"/>', b"<v>99999</v>", b"&#0;", b'<c r="ZZZ9"/>', b'<mergeCell ref="A:B"/>']
+
+        def spoil(old):
+            place = rng.randrange(len(old))
+            return old[:place] + rng.choice(junk) + old[place + rng.randrange(30) :]
+
+        content = rewritten(bare_bytes, {rng.choice([SHEET, "xl/workbook.xml", "xl/styles.xml"]): spoil})
+    path = tmp_path / "spoilt.xlsx"
+    path.write_bytes(content)
+    try:
+        told = [finding.sentence() for finding in check(path)]
+    except CannotRead as error:
+        told = [str(error)]
+    assert all(told)
+
+
+ANYTHING = [
+    None, "", "x", "=A1", "#REF!", -1, 0, 1e300, -1e300, 12.5, True, dt.date(2031, 6, 3), dt.datetime(1900, 1, 1),
+    dt.datetime(9999, 12, 31), "2031-06-03", "3/4/2031", "N1", "A1", "corn", "12,5", "1e5", "yes", "nan", "\u202e",
+    "a" * 70, "é", 48000, 153, "2031-06-20T05:30+99:99", "V8", "cut", "water", "rainfed", dt.time(5, 30), 1e15,
+]  # fmt: skip
+
+
+@pytest.mark.parametrize("seed", range(25))
+def test_any_value_anywhere_never_ends_in_a_traceback(seed, bare_bytes, tmp_path):
+    rng = random.Random(seed)
+    book = load_workbook(io.BytesIO(bare_bytes))
+    for _ in range(rng.choice([1, 5, 20])):
+        page = book[rng.choice([title for title in book.sheetnames if title != "Read first"])]
+        row, column = rng.randint(3, page.max_row), rng.randint(1, page.max_column)
+        value, kind = rng.choice(ANYTHING), rng.choice(["cell", "column", "row", "delete"])
+        if kind == "delete":
+            page.delete_cols(column)
+        rows = range(4, page.max_row + 1) if kind == "column" else [row]
+        columns = range(1, page.max_column + 1) if kind == "row" else [column]
+        for place in rows:
+            for number in columns:
+                page.cell(place, number).value = rng.choice(ANYTHING) if kind == "row" else value
+    path = tmp_path / "any.xlsx"
+    book.save(path)
+    for finding in check(path):
+        assert finding.place
+        assert finding.sentence()

@@ -165,3 +165,14 @@ def larger(tables, stations, days, stands):
         "irrigation_events": tables["irrigation_events"].assign(stand_id="stand-2"),
         "observations": tables["observations"].assign(stand_id=["stand-0", "stand-1"]),
     }
+
+
+def test_values_of_morning_observers_are_placed_where_they_stand(tables, tmp_path):
+    """Read at 7: the highest temperature of a day stands in the next day's row."""
+    tables = dict(tables)
+    tables["stations"] = tables["stations"].assign(observation_hour=[7.0, np.nan])
+    tables["weather"] = tables["weather"].assign(t_max_c=lambda rows: rows["t_max_c"].where(rows.index != 5, 70.0))
+    path = template.write(tmp_path / "morning.xlsx", "si", tables)
+    assert {(finding.place, finding.code) for finding in check(path) if finding.severity == "error"} == {
+        ("Weather!C9", "range")
+    }
