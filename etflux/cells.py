@@ -7,13 +7,14 @@ from collections.abc import Mapping
 import numpy as np
 
 from etflux.outlines import EARTH_RADIUS_KM, Outline
-from etflux.wind import OUTSIDE, Region, merge_small
+from etflux.wind import OUTSIDE, SMALL_CELL, Region, merge_small
 
 CLIP_RADII = 1.5  # a cell reaches no farther than this many radii of its county from the centroid
 LEAST_CENTROIDS = 4
 ARC_STEPS = 72
-SECTORS = 8  # an edge is kept in this many directions, so that air can enter on one side and leave on the other
+WIDEST_ARC_DEG = 150.0  # wider open sides are cut, so that air can enter on one and leave on the other
 PIECE = 0.3  # an edge is cut into pieces of this share of the root of the county's area; wiggles within cancel
+ON_A_LINE = 0.02  # breadth over length of the centroids
 LEAST_SHARED = 0.5  # share of counties that must touch another for outlines to serve
 
 
@@ -45,17 +46,18 @@ def region(
     """
     centre = _centre(latitude_deg, longitude_deg)
     x, y = project(latitude_deg, longitude_deg, centre)
-    faces = None
+    faces, cell_of = None, np.arange(len(x))
     if outlines is not None and all(name in outlines for name in county_ids):
         faces = _from_outlines([outlines[name] for name in county_ids], area_km2, centre)
     if faces is None:
         line = np.linalg.svd(np.stack([x - x.mean(), y - y.mean()]), compute_uv=False)
-        scattered = len(x) >= LEAST_CENTROIDS and line[1] > 1e-3 * line[0]
-        faces = _voronoi(x, y, area_km2) if scattered else _squares(area_km2)
+        scattered = len(x) >= LEAST_CENTROIDS and line[1] > ON_A_LINE * line[0]
+        cell_of = _nearest_large(x, y, area_km2) if scattered else cell_of
+        faces = _voronoi(x, y, area_km2, cell_of) if scattered else _squares(area_km2)
     first, second, east, north = faces
     water = np.zeros(len(x), dtype=bool) if water_edge is None else np.asarray(water_edge, dtype=bool)
     return merge_small(
-        Region(first, second, east, north, np.arange(len(x)), np.asarray(area_km2, float),
+        Region(first, second, east, north, cell_of, np.asarray(area_km2, float),
                _turn(latitude_deg, longitude_deg, centre), water)
     )  # fmt: skip
 
@@ -181,45 +183,44 @@ def _edge_pieces(
     return county[index], group
 
 
-def _voronoi(x: np.ndarray, y: np.ndarray, area_km2: np.ndarray) -> Faces:
+def _nearest_large(x: np.ndarray, y: np.ndarray, area_km2: np.ndarray) -> np.ndarray:
+    """Cell of each county: its own, or that of the nearest county that is not small, (county,) int."""
+    from scipy.spatial import cKDTree
+
+    large = np.flatnonzero(area_km2 >= SMALL_CELL * np.median(area_km2))
+    return cKDTree(np.stack([x[large], y[large]], axis=1)).query(np.stack([x, y], axis=1))[1]
+
+
+def _voronoi(x: np.ndarray, y: np.ndarray, area_km2: np.ndarray, cell_of: np.ndarray) -> Faces:
     """Faces of Voronoi cells, none reaching farther from its centroid than 1.5 radii of its county."""
     from scipy.spatial import Voronoi
 
-    n = len(x)
-    radius = CLIP_RADII * np.sqrt(np.asarray(area_km2, float) / np.pi)
+    n = int(cell_of.max()) + 1
+    large = np.flatnonzero(area_km2 >= SMALL_CELL * np.median(area_km2))
+    x, y = x[large], y[large]
+    radius = CLIP_RADII * np.sqrt(np.bincount(cell_of, area_km2, n) / np.pi)
     reach = 10.0 * (np.hypot(x - x.mean(), y - y.mean()).max() + radius.max())
     angle = np.arange(8) * np.pi / 4.0
     points = np.stack([x, y], axis=1)
     far = np.stack([x.mean() + reach * np.cos(angle), y.mean() + reach * np.sin(angle)], axis=1)
     diagram = Voronoi(np.concatenate([points, far]))  # far points close the outer cells
-    pairs = np.asarray(diagram.ridge_points)
-    ridges = np.array([ends if len(ends) == 2 else (-1, -1) for ends in diagram.ridge_vertices])
-    real = (pairs < n).any(axis=1) & (ridges >= 0).all(axis=1)
-    pairs, ridges = np.sort(pairs[real], axis=1), ridges[real]
-    a, b = diagram.vertices[ridges[:, 0]], diagram.vertices[ridges[:, 1]]
-    whole = pairs[:, 1] < n
-    i, j = pairs[:, 0], np.where(whole, pairs[:, 1], pairs[:, 0])
-    way = b - a
-    centre_way = np.where(whole[:, None], points[j] - points[i], np.stack([way[:, 1], -way[:, 0]], axis=1))
-    side = np.sign(way[:, 1] * centre_way[:, 0] - way[:, 0] * centre_way[:, 1])
+    pairs, ends = np.asarray(diagram.ridge_points), np.array(diagram.ridge_vertices)
+    between = (pairs < n).all(axis=1)
+    first, second = pairs[between].T
+    a, b = diagram.vertices[ends[between, 0]], diagram.vertices[ends[between, 1]]
+    way, over = b - a, points[second] - points[first]
+    side = np.sign(way[:, 1] * over[:, 0] - way[:, 0] * over[:, 1])
     normal = np.stack([way[:, 1], -way[:, 0]], axis=1) * side[:, None]
-    in_i, in_j = _inside(a, b, points[i], radius[i]), _inside(a, b, points[j], radius[j])
-    both = np.stack([np.maximum(in_i[0], in_j[0]), np.minimum(in_i[1], in_j[1])])
-    share = np.where(whole, np.maximum(both[1] - both[0], 0.0), 0.0)
+    own, other = _inside(a, b, points[first], radius[first]), _inside(a, b, points[second], radius[second])
+    share = np.maximum(np.minimum(own[1], other[1]) - np.maximum(own[0], other[0]), 0.0)
     touch = share > 1e-6
-    own_i = np.maximum(in_i[1] - in_i[0], 0.0) - share
-    own_j = np.where(whole, np.maximum(in_j[1] - in_j[0], 0.0) - share, 0.0)
-    bare = np.concatenate([i, j])
-    bare_way = np.concatenate([normal * own_i[:, None], -normal * own_j[:, None]])
+    first, second, faces = first[touch], second[touch], normal[touch] * share[touch, None]
     arcs, arc_way = _arcs(points, radius)
-    cells = np.concatenate([bare, arcs])
-    ways = np.concatenate([bare_way, arc_way])
-    faces = normal[touch] * share[touch, None]
-    sums = np.stack([_net(i[touch], j[touch], faces, cells, ways, n, axis) for axis in (0, 1)], axis=1)
-    cells, ways = np.concatenate([cells, np.arange(n)]), np.concatenate([ways, -sums])  # arcs are polygons: close them
-    outer, vectors = _by_sector(cells, ways, n)
+    # Arcs are polygons: what they leave open, and bare pieces of borders, go to each cell's largest open side.
+    rest = -_sum(first, faces, n) + _sum(second, faces, n) - _sum(arcs, arc_way, n)
+    outer, vectors = _with_rest(arcs, arc_way, rest)
     return (
-        np.concatenate([i[touch], outer]), np.concatenate([j[touch], np.full(len(outer), OUTSIDE)]),
+        np.concatenate([first, outer]), np.concatenate([second, np.full(len(outer), OUTSIDE)]),
         np.concatenate([faces[:, 0], vectors[:, 0]]), np.concatenate([faces[:, 1], vectors[:, 1]]),
     )  # fmt: skip
 
@@ -236,33 +237,48 @@ def _inside(a: np.ndarray, b: np.ndarray, centre: np.ndarray, radius: np.ndarray
 
 
 def _arcs(points: np.ndarray, radius: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-    """Pieces of each county's circle that lie in its own Voronoi cell: the county, and normal times length."""
+    """Open sides: pieces of each county's circle in its own Voronoi cell, as the county and normal times length."""
     from scipy.spatial import cKDTree
 
-    angle = (np.arange(ARC_STEPS) + 0.5) * 2.0 * np.pi / ARC_STEPS
+    n, steps = len(points), np.arange(ARC_STEPS)
+    angle = (steps + 0.5) * 2.0 * np.pi / ARC_STEPS
     direction = np.stack([np.cos(angle), np.sin(angle)], axis=1)
     on_circle = points[:, None, :] + radius[:, None, None] * direction
     _, nearest = cKDTree(points).query(on_circle.reshape(-1, 2))
-    own = nearest.reshape(len(points), ARC_STEPS) == np.arange(len(points))[:, None]
-    county, step = np.nonzero(own)
+    own = nearest.reshape(n, ARC_STEPS) == np.arange(n)[:, None]
+    begins = own & ~np.roll(own, 1, axis=1)
+    turned = (steps + begins.argmax(axis=1)[:, None]) % ARC_STEPS  # so that no side runs over the end of the row
+    own, begins = np.take_along_axis(own, turned, axis=1), np.take_along_axis(begins, turned, axis=1)
+    side = np.cumsum(begins, axis=1)
+    code = np.arange(n)[:, None] * (ARC_STEPS + 1) + side
+    span = np.bincount(code[own], minlength=n * (ARC_STEPS + 1))
+    begin = np.full(n * (ARC_STEPS + 1), ARC_STEPS)
+    np.minimum.at(begin, code[own], np.broadcast_to(steps, own.shape)[own])
+    county, place = np.nonzero(own)
+    here = code[own]
+    parts = np.ceil(span[here] * 360.0 / ARC_STEPS / WIDEST_ARC_DEG).astype(int)
+    part = (place - begin[here]) * parts // span[here]
+    _, index, group = np.unique(here * 4 + part, return_index=True, return_inverse=True)
     chord = 2.0 * np.sin(np.pi / ARC_STEPS) * radius[county]
-    return county, direction[step] * chord[:, None]
+    way = direction[turned[own]] * chord[:, None]
+    return county[index], _sum(group, way, len(index))
 
 
-def _net(
-    i: np.ndarray, j: np.ndarray, faces: np.ndarray, cells: np.ndarray, ways: np.ndarray, n: int, axis: int
-) -> np.ndarray:
-    """Sum of normals times length around every cell."""
-    return np.bincount(i, faces[:, axis], n) - np.bincount(j, faces[:, axis], n) + np.bincount(cells, ways[:, axis], n)
+def _sum(index: np.ndarray, ways: np.ndarray, n: int) -> np.ndarray:
+    """Vectors (k, 2) summed by index, (n, 2)."""
+    return np.stack([np.bincount(index, ways[:, axis], n) for axis in (0, 1)], axis=1)
 
 
-def _by_sector(cells: np.ndarray, ways: np.ndarray, n: int) -> tuple[np.ndarray, np.ndarray]:
-    """Edge of every cell gathered by direction: the cell and the vector of each piece."""
-    sector = ((np.arctan2(ways[:, 1], ways[:, 0]) / (2.0 * np.pi) * SECTORS + SECTORS) % SECTORS).astype(int)
-    code = cells * SECTORS + np.minimum(sector, SECTORS - 1)
-    total = np.stack([np.bincount(code, ways[:, axis], n * SECTORS) for axis in (0, 1)], axis=1)
-    used = np.flatnonzero(np.hypot(total[:, 0], total[:, 1]) > 1e-9)
-    return used // SECTORS, total[used]
+def _with_rest(county: np.ndarray, ways: np.ndarray, rest: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Open sides with each cell's rest added to its largest one; a cell without any gets one of its own."""
+    order = np.argsort(np.hypot(ways[:, 0], ways[:, 1]), kind="stable")
+    largest = np.full(len(rest), -1)
+    largest[county[order]] = order
+    has = largest >= 0
+    ways = ways.copy()
+    ways[largest[has]] += rest[has]
+    alone = np.flatnonzero(~has & (np.hypot(rest[:, 0], rest[:, 1]) > 1e-9))
+    return np.concatenate([county, alone]), np.concatenate([ways, rest[alone]])
 
 
 def _squares(area_km2: np.ndarray) -> Faces:

@@ -193,9 +193,12 @@ class March:
         share, after = (np.diff(np.nan_to_num(part)) for part in (energy.water_share, energy.water_after))
         first, last = daylight(day)
         grounds = [
-            Ground(water.sum(axis=1) * after[:, hour], water * share[:, hour, None], mixed[:, hour + 1])
+            Ground(
+                water.sum(axis=1) * after[:, hour], water * share[:, hour, None], mixed[:, hour + 1],
+                mixed[:, hour] if hour > first else None,
+            )
             for hour in range(first, last)
-        ]
+        ]  # fmt: skip
         self._book(ledger, EMITTED, water * share[:, first:last].sum(axis=1)[:, None])
         if hours is None and self.settings.subsidence_m <= 0.0:
             found = self.stepper.still_day(state, grounds)

@@ -90,6 +90,7 @@ class Ground:
     humidity_mm: np.ndarray  # (row,)
     water_mm: np.ndarray  # (row, source)
     mixed: np.ndarray  # (row,) kg m-2
+    mixed_before: np.ndarray | None = None  # (row,) an hour earlier
 
 
 def active_layers(mixed: np.ndarray, before: State | None) -> int:
@@ -289,14 +290,18 @@ class Stepper:
         weights = mixing_weights(ground.mixed, EDGES[: state.layers + 1])
         for start in range(0, rows, size):
             part = slice(start, start + size)
-            values[part] = mix_in_place(state.moved[part], added[part], ground.mixed[part], weights[part])
-            if state.home is not None and home_values is not None:
-                home_values[part] = mix_in_place(
-                    state.home[part], added[part, layout.tags], ground.mixed[part], weights[part]
-                )
-        if state.still is not None:
-            crops = ground.water_mm[:, layout.is_crop].sum(axis=1)[:, None]
-            mix_in_place(state.still[:, :, None], crops, ground.mixed, weights)
+            moved, mixed, w = state.moved[part], ground.mixed[part], weights[part]
+            home = None if state.home is None else state.home[part]
+            still = None if state.still is None else state.still[part, :, None]
+            upper = None
+            if ground.mixed_before is not None:
+                upper = UpperPart.of(moved, home, layout, mixed, ground.mixed_before[part])
+            values[part] = mix_in_place(moved, added[part], mixed, w, upper)
+            if home is not None and home_values is not None:
+                home_values[part] = mix_in_place(home, added[part, layout.tags], mixed, w, upper)
+            if still is not None:
+                crops = ground.water_mm[part][:, layout.is_crop].sum(axis=1)[:, None]
+                mix_in_place(still, crops, mixed, w)
         return values, home_values
 
     def _added(self, ground: Ground) -> np.ndarray:
@@ -313,18 +318,82 @@ class Stepper:
         return added
 
 
-def mix_in_place(x: np.ndarray, added: np.ndarray, mixed: np.ndarray, weights: np.ndarray) -> np.ndarray:
+def mix_in_place(
+    x: np.ndarray, added: np.ndarray, mixed: np.ndarray, weights: np.ndarray, upper: UpperPart | None = None
+) -> np.ndarray:
     """Mix tracers (row, layer, tracer) from the ground up with what was added; returns the mixed air's (row, tracer).
 
-    As ``column.mix``, but on the array itself and only as far up as any row is mixed.
+    As ``column.mix``, but on the array itself and only as far up as any row is mixed. `upper` tells the rows apart
+    whose mixed air ended in the same layer an hour before.
     """
     reached = int((weights > 0.0).any(axis=0).sum())
     w = weights[:, :reached]
     part = x[:, :reached]
-    value = (np.matmul(w[:, None, :], part)[:, 0, :] + added) / mixed[:, None]
+    total = np.matmul(w[:, None, :], part)[:, 0, :] + added
+    above = None
+    if upper is not None and len(upper.rows):
+        above = upper.value(x)
+        here = x[upper.rows, upper.layer]
+        # What is mixed of this layer is what was mixed before and the next slice of what lies above it.
+        mass, now = LAYER_MASS[upper.layer, None], w[upper.rows, upper.layer, None]
+        total[upper.rows] += here * mass - above * (mass - now) - here * now
+    value = total / mixed[:, None]
     share = w / LAYER_MASS[:reached]
     part += share[:, :, None] * (value[:, None, :] - part)
+    if upper is not None and above is not None:
+        share = share[upper.rows, upper.layer, None]
+        x[upper.rows, upper.layer] = share * value[upper.rows] + (1.0 - share) * above
     return value
+
+
+@dataclass(frozen=True)
+class UpperPart:
+    """Rows whose mixed air ends in the layer where it ended an hour before, and how sharply its two parts differ.
+
+    A stored layer is one mean; its lower part was mixed, its upper part was not. Without telling them apart the mixed
+    air would leak upwards every hour. The lower part is taken to be like the layer below; the upper one follows from
+    the mean, `sharp` (0 to 1, (row,)) of the way, so far that no tracer, nor the room that tags leave, is below 0.
+    """
+
+    rows: np.ndarray
+    layer: np.ndarray
+    mass_before: np.ndarray  # mixed mass of the layer an hour before
+    sharp: np.ndarray
+
+    @classmethod
+    def of(
+        cls, moved: np.ndarray, home: np.ndarray | None, layout: Layout, mixed: np.ndarray, before: np.ndarray
+    ) -> UpperPart:
+        """Find the rows, and how sharp the parts may be."""
+        now, then = (np.searchsorted(EDGES, mass, side="left") - 1 for mass in (mixed, before))
+        rows = np.flatnonzero((now == then) & (now > 0) & (now < moved.shape[1]) & (EDGES[then + 1] - before > 1e-6))
+        layer = now[rows]
+        found = cls(rows, layer, before[rows] - EDGES[layer], np.ones(len(rows)))
+        if not len(rows):
+            return found
+        kept, sharp = [moved], np.ones(len(rows))
+        if home is not None:
+            kept += [home]
+        for x in kept:
+            mean, upper = x[rows, layer], found.value(x)
+            sharp = np.minimum(sharp, _no_further(mean, upper))
+        mean, upper = (values[:, HUMIDITY] - values[:, FLOOR] - values[:, layout.tags].sum(axis=1)
+                       for values in (moved[rows, layer], found.value(moved)))  # fmt: skip
+        sharp = np.minimum(sharp, _no_further(mean[:, None], upper[:, None]))
+        return replace(found, sharp=sharp)
+
+    def value(self, x: np.ndarray) -> np.ndarray:
+        """Tracers of the upper part, (row, tracer)."""
+        mean, below = x[self.rows, self.layer], x[self.rows, self.layer - 1]
+        ratio = self.mass_before / (LAYER_MASS[self.layer] - self.mass_before)
+        return mean + (self.sharp * ratio)[:, None] * (mean - below)
+
+
+def _no_further(mean: np.ndarray, upper: np.ndarray) -> np.ndarray:
+    """Share of the way from mean to upper (row, tracer) that keeps all at 0 or above, (row,)."""
+    with np.errstate(invalid="ignore", divide="ignore"):
+        share = np.where(upper < 0.0, np.maximum(mean, 0.0) / (mean - upper), 1.0)
+    return np.clip(np.nan_to_num(share, nan=1.0).min(axis=1), 0.0, 1.0)
 
 
 def sink(state: State, layout: Layout, share: float) -> tuple[State, np.ndarray]:
