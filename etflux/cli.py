@@ -9,7 +9,7 @@ from __future__ import annotations
 import sys
 from collections.abc import Callable
 from pathlib import Path
-from typing import Annotated, Literal
+from typing import Annotated, Any, Literal
 
 import typer
 
@@ -106,7 +106,7 @@ class _progress:  # noqa: N801 - reads as a statement: with _progress(quiet) as 
             self._bar.stop()
 
 
-def _stderr():  # type: ignore[no-untyped-def]
+def _stderr() -> Any:
     from rich.console import Console
 
     return Console(stderr=True)

@@ -12,6 +12,8 @@ from etflux.weather.places import great_circle_km
 from etflux.weather.record import SOURCE, StationRecord
 
 if TYPE_CHECKING:
+    import pandas as pd
+
     from etflux.case import Case
 
 
@@ -83,7 +85,7 @@ def to_counties(case: Case, record: StationRecord) -> tuple[CountyWeather, list[
     return CountyWeather(index, distance[rows, index], rain, source, stopped), findings
 
 
-def _station_index(counties, record: StationRecord, distance: np.ndarray) -> np.ndarray:  # type: ignore[no-untyped-def]
+def _station_index(counties: pd.DataFrame, record: StationRecord, distance: np.ndarray) -> np.ndarray:
     """The station a county names, else the nearest."""
     import pandas as pd
 

@@ -11,6 +11,8 @@ import numpy as np
 from etflux.variables import flag_bits
 
 if TYPE_CHECKING:
+    import pandas as pd
+
     from etflux.case import Case
 
 SOURCE = flag_bits("source")
@@ -176,20 +178,20 @@ def _calendar(days: np.ndarray, case: Case) -> np.ndarray:
     return np.arange(first, last + np.timedelta64(1, "D"))
 
 
-def _column(stations, name: str, default: float) -> np.ndarray:  # type: ignore[no-untyped-def]
+def _column(stations: pd.DataFrame, name: str, default: float) -> np.ndarray:
     if name not in stations:
         return np.full(len(stations), default)
     column = stations[name].to_numpy(dtype=float, na_value=np.nan)
     return np.where(np.isnan(column), default, column)
 
 
-def _utc_offset(stations) -> np.ndarray:  # type: ignore[no-untyped-def]
+def _utc_offset(stations: pd.DataFrame) -> np.ndarray:
     """Offset of standard time; where not given, that of the nearest 15 degree meridian."""
     given = _column(stations, "utc_offset_h", np.nan)
     return np.where(np.isnan(given), np.round(_column(stations, "longitude_deg", 0.0) / 15.0), given)
 
 
-def _words(stations, name: str) -> np.ndarray:  # type: ignore[no-untyped-def]
+def _words(stations: pd.DataFrame, name: str) -> np.ndarray:
     if name not in stations:
         return np.full(len(stations), "")
     return np.array([str(word).strip().lower() for word in stations[name]])
