@@ -41,7 +41,7 @@ class Limits:
     """
 
     file_bytes: int = 200_000_000
-    unpacked_bytes: int = 1_000_000_000
+    unpacked_bytes: int = 500_000_000
     members: int = 5_000
     ratio: int = 400
     cells: int = 5_000_000
