@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from etflux import airmass, canopy, counties, irrigation, profiles, reference, soilwater, solar
+from etflux import airmass, canopy, cells, counties, irrigation, profiles, reference, soilwater, solar, wind
 from etflux.airmass import AirInputs, AirResults
 from etflux.crops import Stage
 from etflux.findings import Finding
@@ -239,8 +239,8 @@ def _mark_rows(units: pd.DataFrame, record: StationRecord, plants: canopy.Canopy
 
 def county_daily(
     case: Case, record: StationRecord, local: CountyWeather, station: xr.Dataset, units: pd.DataFrame, stand: xr.Dataset
-) -> tuple[xr.Dataset, dict[str, np.ndarray]]:
-    """Area sums over the units of each county, latent flux, and the water that entered the air by source."""
+) -> tuple[xr.Dataset, dict[str, np.ndarray], dict[str, np.ndarray]]:
+    """Area sums over the units of each county, latent flux; by source the water, and what of it went through plants."""
     import xarray as xr
 
     table = case.table("counties")
@@ -259,6 +259,7 @@ def county_daily(
         et_stands = np.where(stand_area > 0.0, mean("et_mm", own, stand_area), np.nan)
     sources = _sources(units)
     water = {name: mean("et_mm", (units["tag"] == name).to_numpy()) for name in sources if name != SPRINKLER}
+    moved = {name: mean("transpiration_mm", (units["tag"] == name).to_numpy()) for name in water}
     loss = mean("sprinkler_loss_mm")
     water[SPRINKLER] = loss
     transpiration, evaporation = mean("transpiration_mm"), mean("evaporation_mm") + loss
@@ -297,7 +298,7 @@ def county_daily(
     )  # fmt: skip
     dataset["le_by_tag_w_m2"] = ((*dims, "tag"), by_tag)
     dataset["ground_cover"] = (dims, mean("ground_cover"))
-    return dataset, water
+    return dataset, water, moved
 
 
 def _sources(units: pd.DataFrame) -> tuple[str, ...]:
@@ -322,9 +323,10 @@ def _county_provisional(units: pd.DataFrame, stand: xr.Dataset, index: np.ndarra
 
 
 def air_inputs(
-    case: Case, record: StationRecord, local: CountyWeather, county: xr.Dataset, water: dict[str, np.ndarray]
-) -> AirInputs:
-    """What the air is given, by county."""
+    case: Case, record: StationRecord, local: CountyWeather, county: xr.Dataset, water: dict[str, np.ndarray],
+    moved: dict[str, np.ndarray],
+) -> AirInputs:  # fmt: skip
+    """What the air is given, by county: `water` of each source, and what of it `moved` through plants."""
     table, place, v = case.table("counties"), local.station_index, record.values
     ids = tuple(county["county_id"].to_numpy())
     elevation = record.elevation_m[place]
@@ -355,7 +357,24 @@ def air_inputs(
         given_depth_m=depth,
         given_hour=hour,
         sites=profiles.site_profiles(case.table("profiles")),
+        dew_point_afternoon_c=v["dew_point_afternoon_c"][:, place],
+        u2_m_s=v["u2_m_s"][:, place],
+        transpiration_mm=np.stack([moved.get(name, np.zeros_like(local.rain_mm)) for name in water], axis=-1),
+        **_wind(case, record, ids),
     )
+
+
+def _wind(case: Case, record: StationRecord, ids: tuple[str, ...]) -> dict[str, Any]:
+    """Cells of the counties and the wind over them, where any wind is given."""
+    if not len(case.table("wind")):
+        return {}
+    table = case.table("counties")
+    place = table["latitude_deg"].to_numpy(float), table["longitude_deg"].to_numpy(float)
+    water = table["edge"].fillna("").astype(str).eq("water").to_numpy() if "edge" in table else None
+    return {
+        "region": cells.region(ids, *place, table["area_km2"].to_numpy(float), case.outlines or None, water),
+        "winds": wind.winds(case.table("wind"), record.dates, ids, *place, case.settings),
+    }
 
 
 def with_air(county: xr.Dataset, air: AirResults) -> xr.Dataset:
@@ -364,26 +383,6 @@ def with_air(county: xr.Dataset, air: AirResults) -> xr.Dataset:
     found = county.drop_vars("ground_cover").assign({name: (dims, values) for name, values in air.county.items()})
     found = found.assign_coords(hour=air.hours)
     return found.assign({f"hourly_{name}": ((*dims, "hour"), values) for name, values in air.hourly.items()})
-
-
-def contribution_table(county: xr.Dataset, air: AirResults, hour: float) -> pd.DataFrame:
-    """Contribution by county, day, cover and age, long; rows without any water are left out."""
-    import pandas as pd
-
-    g_kg, c = air.tags["contribution_g_kg"], air.tags["contribution_c"]
-    day, place, source, age = np.nonzero(np.nan_to_num(g_kg) > 0.0)
-    names = np.array(air.sources, dtype=object)
-    return pd.DataFrame(
-        {
-            "date": county["date"].to_numpy()[day],
-            "county_id": county["county_id"].to_numpy()[place],
-            "hour": hour,
-            "cover": names[source],
-            "age_d": age,
-            "contribution_c": c[day, place, source, age],
-            "contribution_g_kg": g_kg[day, place, source, age],
-        }
-    )
 
 
 def budget_table(stand: xr.Dataset, county: xr.Dataset, air: AirResults) -> pd.DataFrame:
@@ -430,11 +429,15 @@ def results(
     fills = pd.DataFrame(
         [vars(row) for row in record.fills], columns=["station_id", "quantity", "method", "first", "last", "days"]
     )
+    labels = county["date"].to_numpy(), county["county_id"].to_numpy()
     return Results(
         station=station,
         stand=stand,
         county=county,
-        contribution=contribution_table(county, air, case.settings.contribution_hour),
+        contribution=airmass.frames.contribution(*labels, air, case.settings.contribution_hour),
+        contribution_hours=airmass.frames.other_hours(*labels, air),
+        ranges=airmass.frames.ranges(*labels, air),
+        moistened_by=airmass.frames.moistened_by(*labels, air),
         budget=budget_table(stand, county, air),
         marks=marks,
         fills=fills,

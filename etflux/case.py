@@ -52,7 +52,7 @@ TABLES: Mapping[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
     "rain_gauges": (("county_id", "date", "rain_mm"), ()),
     "counties": (
         ("county_id", "area_km2", "latitude_deg", "longitude_deg"),
-        ("name", "elevation_m", "station_id"),
+        ("name", "elevation_m", "station_id", "edge"),
     ),
     "rest": (("county_id", "part", "share_pct", "treatment"), ("cover_id", "soil_id")),
     "soils": (
@@ -106,11 +106,14 @@ class Case:
         "covers" and "soils" are complete: the packaged rows with the user's own rows on top.
     source : mapping
         What the case was read from: path, sha256, template version.
+    outlines : mapping
+        Outlines of the counties by id (``etflux.outlines``), where any are given: the wind goes over their borders.
     """
 
     settings: Settings
     tables: Mapping[str, pd.DataFrame]
     source: Mapping[str, Any] = field(default_factory=dict)
+    outlines: Mapping[str, Any] = field(default_factory=dict)
 
     def table(self, name: str) -> pd.DataFrame:
         """One table, or an empty one with its columns."""

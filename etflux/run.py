@@ -58,10 +58,10 @@ def run_case(case: Case, findings: Sequence[Finding] | None = None, progress: Pr
     stand, marks, grown = assemble.stand_daily(case, record, local, station, units, tell)
 
     tell("counties", 0.6)
-    county, water = assemble.county_daily(case, record, local, station, units, stand)
+    county, water, moved = assemble.county_daily(case, record, local, station, units, stand)
 
     tell("air above the counties", 0.65)
-    given = assemble.air_inputs(case, record, local, county, water)
+    given = assemble.air_inputs(case, record, local, county, water, moved)
     air = airmass.season(given, case.settings, lambda share: tell("air above the counties", 0.65 + 0.3 * share))
 
     tell("results", 0.95)

@@ -133,7 +133,7 @@ def terms(inputs: AirInputs, course: Course, found: dict[str, np.ndarray], hour:
         **{name: np.where(known, values, np.nan) for name, values in parts.items()},
         "rise_other_c": other,
         "estimate_error_c": estimate - afternoon,
-        "latent_heat_hour_w_m2": an_hour * latent_heat_of_vaporization(day.t_max_c) * 1e6,
+        "le_hour_w_m2": an_hour * latent_heat_of_vaporization(day.t_max_c) * 1e6,
     }
 
 

@@ -50,23 +50,25 @@ def season(inputs: AirInputs, settings: Settings, progress: Callable[[float], No
         sources=len(inputs.sources), ages=AGES, is_crop=inputs.is_crop, outside=True, home=moved_by_wind,
         origins=counties if moved_by_wind and counties <= ORIGINS_UP_TO else 0,
     )  # fmt: skip
-    days: list[dict[str, np.ndarray]] = []
+    found: dict[str, np.ndarray] = {}
     ledgers: list[dict[str, np.ndarray]] = []
     real = RealDays()
     extra = settings.air_worlds or settings.air_ranges
     for course in March(inputs, settings, layout):
-        days.append(_one_day(inputs, settings, layout, course))
+        for name, values in _one_day(inputs, settings, layout, course).items():
+            if name not in found:
+                found[name] = np.empty((n_days, *values.shape), values.dtype)
+            found[name][course.day.number] = values
         ledgers.append(course.ledger)
         if settings.air_worlds:
             real.keep(course)
-        tell(len(days) / n_days * (1.0 - EXTRA_WORK * extra))
-    found = {name: np.stack([day[name] for day in days]) for name in (days[0] if days else ())}
-    if days:
+        tell(len(ledgers) / n_days * (1.0 - EXTRA_WORK * extra))
+    if found:
         rise.add_bias(found)
-    if settings.air_worlds and days:
+    if settings.air_worlds and found:
         found |= worlds.effects(inputs, settings, real, found)
         real.clear()
-    spread = ranges.spread(inputs, settings, found) if settings.air_ranges and days else {}
+    spread = ranges.spread(inputs, settings, found) if settings.air_ranges and found else {}
     tell(1.0)
     ledger = {term: np.stack([day.get(term, np.zeros(layout.sources)) for day in ledgers]) for term in _terms(ledgers)}
     hourly = {name[7:]: found.pop(name) for name in list(found) if name.startswith("hourly_")}

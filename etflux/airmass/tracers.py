@@ -8,8 +8,11 @@ county is kept apart (`home`), as is a column without wind (`still`), from which
 
 from __future__ import annotations
 
+import os
+from collections.abc import Callable, Sequence
+from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass, replace
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
@@ -22,6 +25,7 @@ if TYPE_CHECKING:
 HUMIDITY, FLOOR = 0, 1
 MixedAir = tuple[np.ndarray | None, np.ndarray | None]
 CHUNK_BYTES = 1_000_000  # rows worked on together fit in the processor's cache
+MANY_PARTS = 8  # fewer are not worth a thread
 LEAST_LAYERS = 30  # kept even where the air mixes less; the replaced share counts the lowest 1500 kg m-2
 
 
@@ -183,6 +187,7 @@ class Stepper:
     def __init__(self, layout: Layout, copies: int, counties: int, area_km2: np.ndarray) -> None:
         self.layout, self.copies, self.counties, self.area = layout, copies, counties, area_km2
         self._spare: np.ndarray | None = None
+        self._pool: ThreadPoolExecutor | None = None
         self._known: list[tuple[Hour, int, list[tuple[slice, csr_matrix]]]] = []  # matrices in pieces
 
     def step(self, state: State, winds: list[Hour] | None, ground: Ground | None) -> tuple[State, MixedAir, np.ndarray]:
@@ -245,7 +250,9 @@ class Stepper:
         if self._spare is None or self._spare.shape != moved.shape:
             self._spare = np.empty_like(moved)
         new = self._spare[rows]
-        for part, matrix in self._parts(hour, flat.shape[1]):
+
+        def move(piece: tuple[slice, csr_matrix]) -> None:
+            part, matrix = piece
             x = (matrix @ flat).reshape(-1, *old.shape[1:])
             inflow = hour.from_outside[part, None]
             x[:, :, HUMIDITY] += inflow * old[part, :, HUMIDITY]
@@ -254,6 +261,8 @@ class Stepper:
                 room = old[part, :, HUMIDITY] - old[part, :, FLOOR]
                 x[:, :, 2] += hour.from_land[part, None] * np.minimum(state.still[rows][part], np.maximum(room, 0.0))
             new[part] = x
+
+        self._each(move, self._parts(hour, flat.shape[1]))
         if self.copies == 1:
             self._spare = moved
             return new
@@ -288,7 +297,8 @@ class Stepper:
         home_values = None if state.home is None else np.empty((rows, state.home.shape[2]))
         size = max(1, CHUNK_BYTES // (8 * state.layers * layout.tracers))
         weights = mixing_weights(ground.mixed, EDGES[: state.layers + 1])
-        for start in range(0, rows, size):
+
+        def mix(start: int) -> None:
             part = slice(start, start + size)
             moved, mixed, w = state.moved[part], ground.mixed[part], weights[part]
             home = None if state.home is None else state.home[part]
@@ -302,7 +312,20 @@ class Stepper:
             if still is not None:
                 crops = ground.water_mm[part][:, layout.is_crop].sum(axis=1)[:, None]
                 mix_in_place(still, crops, mixed, w)
+
+        self._each(mix, range(0, rows, size))
         return values, home_values
+
+    def _each(self, work: Callable[[Any], None], parts: Sequence[Any]) -> None:
+        """Work on every part, on all processors if there are many; parts share nothing."""
+        if len(parts) < MANY_PARTS:
+            for part in parts:
+                work(part)
+            return
+        if self._pool is None:
+            self._pool = ThreadPoolExecutor(os.cpu_count() or 1)
+        for _ in self._pool.map(work, parts):
+            pass
 
     def _added(self, ground: Ground) -> np.ndarray:
         """What enters every tracer, (row, tracer). [kg m-2]"""
@@ -339,7 +362,9 @@ def mix_in_place(
         total[upper.rows] += here * mass - above * (mass - now) - here * now
     value = total / mixed[:, None]
     share = w / LAYER_MASS[:reached]
-    part += share[:, :, None] * (value[:, None, :] - part)
+    whole = int((share == 1.0).all(axis=0).sum())  # layers that every row mixes from top to bottom
+    part[:, :whole] = value[:, None, :]
+    part[:, whole:] += share[:, whole:, None] * (value[:, None, :] - part[:, whole:])
     if upper is not None and above is not None:
         share = share[upper.rows, upper.layer, None]
         x[upper.rows, upper.layer] = share * value[upper.rows] + (1.0 - share) * above

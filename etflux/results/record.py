@@ -34,7 +34,7 @@ class Results:
         dimension, tag. What of a unit or county does not change with the day is a coordinate on its dimension;
         `stored_start_mm` (unit_id) of the stands is the water held before the first day, counted from field capacity.
         A variable that a run has no values for may be left out.
-    contribution, budget, marks, fills, names, methods : DataFrame
+    contribution, contribution_hours, ranges, moistened_by, budget, marks, fills, names, methods : DataFrame
         Columns of ``tables/result_columns.toml``. `term` of a budget is a name of the registry, or words.
     findings : sequence of Finding
         What the checks said.
@@ -54,6 +54,9 @@ class Results:
     stand: xr.Dataset
     county: xr.Dataset
     contribution: pd.DataFrame = _empty("contribution")
+    contribution_hours: pd.DataFrame = _empty("contribution_hours")
+    ranges: pd.DataFrame = _empty("ranges")
+    moistened_by: pd.DataFrame = _empty("moistened_by")
     budget: pd.DataFrame = _empty("budget")
     marks: pd.DataFrame = _empty("marks")
     fills: pd.DataFrame = _empty("fills")

@@ -116,6 +116,7 @@ def choices(name: str) -> tuple[str, ...]:
         "from_stage": tuple(RULE_STAGES),
         "to_stage": tuple(RULE_STAGES),
         "day_part": ("day", "night", "both"),
+        "edge": ("land", "water"),
         "habit": ("annual", "sod", "water", "bare"),
         "marks": ("heat units", "day lengths", "green-up", "all year"),
         "cutting": ("none", "averaged", "dated"),

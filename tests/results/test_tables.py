@@ -20,7 +20,11 @@ LISTED = {
     "contribution_g_kg contribution_low_c contribution_high_c lcl_m available_energy_mj_m2_d sensible_heat_mj_m2_d "
     "heat_elsewhere_mj_m2_d flags estimated_share_pct provisional contribution_same_day_c contribution_carried_c "
     "contribution_12_c contribution_18_c contribution_peak_c peak_hour replaced_share profile_distance_km "
-    "sprinkler_loss_county_mm rain_mm_source",
+    "sprinkler_loss_county_mm rain_mm_source contribution_home_c contribution_other_c contribution_outside_c "
+    "break_hour crossing_h le_hour_w_m2 confidence_code effect_of_crops_c dew_point_without_crops_c depth_without_crops_m "
+    "theta_without_crops_c effect_of_evaporation_c dew_point_without_evaporation_c depth_without_evaporation_m "
+    "theta_without_evaporation_c rise_observed_c rise_mixing_c rise_same_day_c rise_near_ground_c rise_other_c "
+    "estimate_error_c estimate_bias_c",
     "county_tags": "date county_id tag le_by_tag_w_m2",
     "stand_daily": "date unit_id stand_id part kind county_id cover_id eto_mm stage_code days_after_planting kcb ke ks "
     "kc plant_height_m root_depth_m ground_cover few evaporation_mm transpiration_mm et_mm et_potential_mm de_mm dr_mm "
@@ -32,7 +36,10 @@ LISTED = {
     "t_mean_c_source dew_point_c_source vapour_pressure_kpa_source rh_min_pct_source rs_mj_m2_d_source u2_m_s_source "
     "rain_mm_source estimated_share_pct provisional",
     "second_opinions": "date station_id method eto_mm",
-    "contribution": "date county_id hour cover age_d contribution_c contribution_g_kg",
+    "contribution": "date county_id hour cover age_d contribution_c contribution_g_kg home_g_kg",
+    "contribution_hours": "date county_id hour hour_kind cover contribution_c contribution_g_kg",
+    "ranges": "date county_id varied contribution_low_c contribution_high_c",
+    "moistened_by": "date county_id from_county_id contribution_c contribution_g_kg",
     "budget": "balance subject term value unit",
     "names": "kind id name",
     "marks": "unit_id mark date basis",
