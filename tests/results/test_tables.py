@@ -22,7 +22,8 @@ LISTED = {
     "contribution_12_c contribution_18_c contribution_peak_c peak_hour replaced_share profile_distance_km "
     "sprinkler_loss_county_mm rain_mm_source contribution_home_c contribution_other_c contribution_outside_c "
     "break_hour crossing_h le_hour_w_m2 confidence_code effect_of_crops_c dew_point_without_crops_c "
-    "depth_without_crops_m theta_without_crops_c effect_of_evaporation_c dew_point_without_evaporation_c depth_without_evaporation_m "
+    "depth_without_crops_m theta_without_crops_c effect_of_evaporation_c dew_point_without_evaporation_c "
+    "depth_without_evaporation_m "
     "theta_without_evaporation_c rise_observed_c rise_mixing_c rise_same_day_c rise_near_ground_c rise_other_c "
     "estimate_error_c estimate_bias_c",
     "county_tags": "date county_id tag le_by_tag_w_m2",
