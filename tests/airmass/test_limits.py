@@ -133,7 +133,7 @@ def test_given_depths_by_county_win_over_those_of_all():
 def test_a_world_with_the_same_water_is_the_real_one(make):
     """Run by the same code from the same mornings: nothing is left of the effect."""
     inputs = make.summer(days=4, wind=make.noisy(4, 20))
-    settings = with_settings(Settings(), air_ranges=False)
+    settings = with_settings(Settings(), air_worlds=True)
     found = airmass.season(replace(inputs, water_without_crops_mm=inputs.water_mm.sum(axis=2)), settings).county
     assert found["effect_of_crops_c"] == pytest.approx(np.zeros((4, 20)), abs=2e-3)
     assert found["depth_without_crops_m"] == pytest.approx(found["mixing_depth_m"], rel=1e-3)
@@ -144,7 +144,7 @@ def test_other_worlds_are_drier_deeper_and_warmer(make):
     inputs = make.summer(days=5, et_mm=5.0)
     less = inputs.water_mm.sum(axis=2) * 0.6
     found = airmass.season(
-        replace(inputs, water_without_crops_mm=less), with_settings(Settings(), air_ranges=False)
+        replace(inputs, water_without_crops_mm=less), with_settings(Settings(), air_worlds=True)
     ).county
     real, crops, none = (
         (found["dew_point_mixed_c"], found["mixing_depth_m"], found["theta_mixed_c"]),
@@ -186,7 +186,7 @@ def test_two_sentences_name_the_other_worlds():
 def test_ranges_hold_the_contribution_and_move_the_right_way(make):
     inputs = make.summer(days=4, wind=(2.0, 0.0))
     moved = inputs.water_mm * np.array([0.8, 0.8, 0.0])
-    found = airmass.season(replace(inputs, transpiration_mm=moved), with_settings(Settings(), air_worlds=False))
+    found = airmass.season(replace(inputs, transpiration_mm=moved), with_settings(Settings(), air_ranges=True))
     base = found.county["contribution_c"]
     assert set(found.ranges) == {ranges.EDGE, *ranges.VARIED}
     for name, (low, high) in found.ranges.items():
@@ -201,7 +201,7 @@ def test_ranges_hold_the_contribution_and_move_the_right_way(make):
 
 
 def test_crop_coefficient_needs_transpiration(make):
-    found = airmass.season(make.summer(days=1), with_settings(Settings(), air_worlds=False))
+    found = airmass.season(make.summer(days=1), with_settings(Settings(), air_ranges=True))
     assert "crop coefficient 10 % less or more" not in found.ranges
 
 
