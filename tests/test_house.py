@@ -124,3 +124,12 @@ def test_unknown_unit_lists_the_known_ones():
         variables.convert(1.0, "furlong", "m")
     with pytest.raises(ValueError, match="temperature.*length"):
         variables.convert(1.0, "°C", "m")
+
+
+def test_packaged_tables_are_found_from_an_empty_folder(tmp_path):
+    code = "from importlib.resources import files; print(*sorted(p.name for p in files('etflux.tables').iterdir()))"
+    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True, cwd=tmp_path)
+    assert {
+        "covers.csv", "curve_numbers.csv", "findings.toml", "flags.toml", "heat_units.csv", "result_columns.toml",
+        "settings.toml", "soils.csv", "units.toml", "variables.toml", "wetted_fractions.csv",
+    } <= set(done.stdout.split())  # fmt: skip
