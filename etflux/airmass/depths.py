@@ -76,10 +76,10 @@ def depths_of(
     floor = interpolated(np.full((len(heights), 1), settings.depth_floor_m), heights, edges)
     shares = [settings.entrainment_share if m.entrainment is None else m.entrainment for m in members]
     entrainment = np.repeat(shares, counties)
-    by_heat = np.maximum(column.mixed_mass(column.heat_need(theta_v, entrainment), supply), floor)
+    by_heat = np.maximum(_masses(theta_v, entrainment, supply, day), floor)
     no_entrainment, break_hour = np.full_like(by_heat, np.nan), np.full(len(by_heat), np.nan)
     if whole:
-        no_entrainment = np.maximum(column.mixed_mass(column.heat_need(theta_v, 0.0), supply), floor)
+        no_entrainment = np.maximum(_masses(theta_v, 0.0, supply, day), floor)
         break_hour = _break_hour(morning, by_heat, floor[:, 0])
     given = np.isfinite(day.given_depth_m)
     water = by_heat
@@ -87,6 +87,15 @@ def depths_of(
         water = np.where(given[:, None], _given(day, supply, heights, heat_ratio), by_heat)
     water = np.where(np.isnan(by_heat), np.nan, np.maximum(_varied(water, heights, members, counties), floor))
     return Depths(heights, floor[:, 0], by_heat, no_entrainment, water, given, break_hour)
+
+
+def _masses(theta_v: np.ndarray, entrainment: np.ndarray | float, supply: np.ndarray, day: Day) -> np.ndarray:
+    """Mixed mass at every hour edge; between sunset and sunrise nothing changes."""
+    first, last = day.daylight
+    found = np.zeros_like(supply)
+    found[:, first : last + 1] = column.mixed_mass(column.heat_need(theta_v, entrainment), supply[:, first : last + 1])
+    found[:, last + 1 :] = found[:, last : last + 1]
+    return np.where(np.isnan(found[:, last : last + 1]), np.nan, found)
 
 
 def interpolated(x: np.ndarray, knots: np.ndarray, values: np.ndarray) -> np.ndarray:

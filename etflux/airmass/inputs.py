@@ -210,6 +210,11 @@ class Day:
     water_mm: np.ndarray  # (row, source)
     valid: np.ndarray  # bool: nothing that the day needs is missing
 
+    @property
+    def daylight(self) -> tuple[int, int]:
+        """First and last hour edge of the region's day, which hold every county's sunrise and sunset."""
+        return int(np.floor(self.sunrise.min())), int(np.ceil(self.sunset.max()))
+
 
 def day_of(inputs: AirInputs, number: int, members: tuple[Variation, ...]) -> Day:
     """One day's inputs for every copy of the region."""

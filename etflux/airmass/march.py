@@ -191,7 +191,7 @@ class March:
         water = np.where(day.valid[:, None], day.water_mm, 0.0)
         mixed = np.where(np.isnan(depths.water) | ~day.valid[:, None], IDLE_MASS, depths.water)
         share, after = (np.diff(np.nan_to_num(part)) for part in (energy.water_share, energy.water_after))
-        first, last = daylight(day)
+        first, last = day.daylight
         grounds = [
             Ground(
                 water.sum(axis=1) * after[:, hour], water * share[:, hour, None], mixed[:, hour + 1],
@@ -201,7 +201,10 @@ class March:
         ]  # fmt: skip
         self._book(ledger, EMITTED, water * share[:, first:last].sum(axis=1)[:, None])
         if hours is None and self.settings.subsidence_m <= 0.0:
-            found = self.stepper.still_day(state, grounds)
+            shown = (
+                None if self.layout.outside else (round(self.settings.contribution_hour) - first - 1, last - first - 1)
+            )
+            found = self.stepper.still_day(state, grounds, shown)
         else:
             found = []
             for ground in grounds:
@@ -210,8 +213,9 @@ class March:
                 ledger[WIND] = ledger.get(WIND, 0.0) + left
                 state = self._sink(state, ledger)
         for place, (all_values, home_values) in enumerate(found, first + 1):
-            values[place] = all_values
-            if home is not None:
+            if all_values is not None:
+                values[place] = all_values
+            if home is not None and home_values is not None:
                 home[place] = home_values
         for record in (values, home):
             if record is not None:
@@ -221,7 +225,7 @@ class March:
 
     def _night(self, day: Day, state: State, ledger: Ledger) -> State:
         """Hours from sunset to sunrise: wind, or a share of the air replaced by background air."""
-        first, last = daylight(day)
+        first, last = day.daylight
         hours = self._hours(day.number, "night")
         longer = np.repeat([member.residence_plus_d for member in self.members], self.counties)
         by_residence = np.exp(-1.0 / np.maximum(self.settings.residence_days + longer, 0.05))
@@ -276,11 +280,6 @@ class March:
         tags = state.moved[:, :, self.layout.tags]
         self._book(ledger, MIXED, self._by_source(tags * below[:, :, None]))
         self._book(ledger, ALOFT, self._by_source(tags * (1.0 - below)[:, :, None]))
-
-
-def daylight(day: Day) -> tuple[int, int]:
-    """First and last hour edge of the region's day, which hold every county's sunrise and sunset."""
-    return int(np.floor(np.nanmin(day.sunrise))), int(np.ceil(np.nanmax(day.sunset)))
 
 
 def mixed_theta(morning: Morning, energy: Energy, depths: Depths) -> np.ndarray:

@@ -222,25 +222,29 @@ class Stepper:
             state = replace(state, moved=moved)
         return state, (None, None) if ground is None else self._mix_all(state, ground), left
 
-    def still_day(self, state: State, grounds: list[Ground]) -> list[MixedAir]:
+    def still_day(self, state: State, grounds: list[Ground], shown: tuple[int, ...] | None = None) -> list[MixedAir]:
         """All hours of a day without wind at once: what is mixed each hour is what lay below plus all that was added.
 
-        Mixing deeper and deeper forgets the earlier steps, so that the state needs the last one only.
+        Mixing deeper and deeper forgets the earlier steps, so that the state needs the last one only. With `shown`,
+        places of hours, only those are worked out.
         """
-        added = np.cumsum([self._added(ground) for ground in grounds], axis=0)
-        mixed = np.stack([ground.mixed for ground in grounds])
-        edges = EDGES[: state.layers + 1]
+        places = list(range(len(grounds))) if shown is None else [min(max(k, 0), len(grounds) - 1) for k in shown]
+        water = np.cumsum([ground.water_mm for ground in grounds], axis=0)
+        moist = np.cumsum([ground.humidity_mm for ground in grounds], axis=0)
+        added = np.stack([self._added(Ground(moist[k], water[k], grounds[k].mixed)) for k in places])
+        mixed = np.stack([grounds[k].mixed for k in places])
         hours, rows = mixed.shape
-        weights = mixing_weights(mixed.T.reshape(-1), edges).reshape(rows, hours, -1)
+        weights = mixing_weights(mixed.T.reshape(-1), EDGES[: state.layers + 1]).reshape(rows, hours, -1)
         values = (np.matmul(weights, state.moved).swapaxes(0, 1) + added) / mixed[:, :, None]
         home: list[np.ndarray | None] = [None] * hours
         if state.home is not None:
             tags = added[:, :, self.layout.tags]
             home = list((np.matmul(weights, state.home).swapaxes(0, 1) + tags) / mixed[:, :, None])
-        water = np.sum([ground.water_mm for ground in grounds], axis=0)
-        moist = np.sum([ground.humidity_mm for ground in grounds], axis=0)
-        self._mix_all(state, Ground(moist, water, grounds[-1].mixed))
-        return list(zip(values, home, strict=True))
+        self._mix_all(state, Ground(moist[-1], water[-1], grounds[-1].mixed))
+        found: list[MixedAir] = [(None, None)] * len(grounds)
+        for k, place in enumerate(places):
+            found[place] = (values[k], home[k])
+        return found
 
     def _move(self, moved: np.ndarray, rows: slice, hour: Hour, state: State) -> np.ndarray:
         """One sub-step of one copy."""
