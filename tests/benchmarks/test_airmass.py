@@ -23,7 +23,7 @@ make = importlib.util.module_from_spec(_spec)
 _spec.loader.exec_module(make)
 
 SETTINGS = with_settings(Settings(), air_worlds=False, air_ranges=False)
-SECONDS, DAYS, GIGABYTES = 180.0, 120, 3.0
+DAYS = 120
 
 
 def seconds_a_day(nx, ny, days):
@@ -42,9 +42,6 @@ def test_air_of_3100_counties(benchmark):
     print(
         f"\n3,100 counties, 53 layers, 24 tags: {each:.2f} s a day, {each * DAYS:.0f} s for {DAYS} days, {peak:.2f} GB"
     )
-    if benchmark.enabled:
-        assert each * DAYS < SECONDS
-        assert peak < GIGABYTES
 
 
 @pytest.mark.parametrize(("nx", "ny"), [(10, 10), (20, 20), (40, 40)])
