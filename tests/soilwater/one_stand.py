@@ -1,7 +1,10 @@
 """One stand, one day, in plain Python: a slow transcription that the fast day step is held against.
 
-Written from FAO Irrigation and Drainage Paper 56 (chapters 6 to 8 and 11) equation by equation, without sight of the
-fast code. Plain floats and `if`; nothing is shared with the package.
+The balance is written from FAO Irrigation and Drainage Paper 56 (chapters 6 to 8 and 11) equation by equation, without
+sight of the fast code. Need and days to stress were added later with the fast code known, so they check its arithmetic
+but are not an independent reading. Where the paper is silent (roots at the day's start, the part left dry, days to
+stress from the day's end and at no less than 0.01 mm/d) the package's documented conventions hold. Plain floats and
+`if`; nothing is shared with the package.
 """
 
 from __future__ import annotations
@@ -142,6 +145,27 @@ def rule_net(
     return depth
 
 
+def need(dr: float, room: float, open_: bool) -> float:
+    """Net depth that would fill the root zone but for the room kept for rain; nothing outside the window."""
+    if not open_ or dr <= room:
+        return 0.0
+    return dr - room
+
+
+def days_to_stress(raw: float, d: float, use: list[float], asked: bool) -> float:
+    """Days until D reaches RAW at the mean use of the last three days; 0 is now; blank without three days."""
+    if not asked or len(use) < 3:
+        return float("nan")
+    if d >= raw:
+        return 0.0
+    return (raw - d) / max((use[-1] + use[-2] + use[-3]) / 3.0, 0.01)  # floor: no use, no division by nothing
+
+
+def for_plants(g: Ground, dr: float, de: float, few: float) -> float:
+    """Root zone depletion D without what the top lacks below wilting point."""
+    return dr - few * max(de - g.available_mm_m * g.ze, 0.0)
+
+
 def moved_roots(g: Ground, store: Store, zr: float) -> Store:
     """Roots deepen, the new slice bringing what it lacks (p. 173), or withdraw at the season's end."""
     s = replace(store)
@@ -160,6 +184,7 @@ def moved_roots(g: Ground, store: Store, zr: float) -> Store:
 
 def drain(store: Store, water: dict[str, float], loss: float) -> None:
     """Let a surface method's loss pass below the roots (changes both)."""
+    water["irrigation"] += loss
     water["percolation"] += loss
     left = store.ds - loss
     water["drainage"] += max(-left, 0.0)
@@ -168,7 +193,7 @@ def drain(store: Store, water: dict[str, float], loss: float) -> None:
 
 def one_day(g: Ground, store: Store, w: Weather) -> tuple[Store, dict[str, float]]:
     """One day of FAO-56's dual crop coefficient balance."""
-    water = {}
+    water = {"irrigation": w.irrigation}
     s = moved_roots(g, store, w.zr)
 
     liquid, melt, s.snow = snow_balance(s.snow, w.precipitation, w.t_mean, w.melt_factor)
@@ -214,7 +239,7 @@ def one_day(g: Ground, store: Store, w: Weather) -> tuple[Store, dict[str, float
     etc = (w.kcb + ke) * w.eto
     p = min(max(g.p_table + 0.04 * (5.0 - etc), 0.1), 0.8)
     raw = p * taw
-    d = dr_start - few * max(de_start - g.available_mm_m * g.ze, 0.0)
+    d = for_plants(g, dr_start, de_start, few)
     ks = 1.0 if d <= raw or w.kcb <= 0.0 else min(max((taw - d) / (taw - raw), 0.0), 1.0)
     t = min(ks * w.kcb * w.eto, max(0.0, dr_limit - dr_start - e))
 
@@ -224,6 +249,6 @@ def one_day(g: Ground, store: Store, w: Weather) -> tuple[Store, dict[str, float
     s.ds = max(s.ds, 0.0)
     s.few = few
     water.update(
-        e=e, t=t, ke=ke, ks=ks, kr=kr, few=few, percolation=percolation, drainage=drainage, taw=taw, raw=raw, d=d, p=p
+        e=e, t=t, ke=ke, ks=ks, few=few, percolation=percolation, drainage=drainage, taw=taw, raw=raw, p=p, etc=etc
     )
     return s, water
