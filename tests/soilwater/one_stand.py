@@ -2,9 +2,9 @@
 
 The balance is written from FAO Irrigation and Drainage Paper 56 (chapters 6 to 8 and 11) equation by equation, without
 sight of the fast code. The irrigation rule, need and days to stress were added later with the fast code known, so they
-check its arithmetic but are not an independent reading. Where the paper is silent (roots at the day's start, the part left dry, days to
-stress from the day's end and at no less than 0.01 mm/d) the package's documented conventions were taken over, also
-later. Plain floats and `if`; nothing is shared with the package.
+check its arithmetic but are not an independent reading. Where the paper is silent (roots at the day's start, the part
+left dry, days to stress from the day's end and at no less than 0.01 mm/d) the package's documented conventions were
+taken over, also later. Plain floats and `if`; nothing is shared with the package.
 """
 
 from __future__ import annotations
