@@ -57,7 +57,7 @@ def to_counties(case: Case, record: StationRecord) -> tuple[CountyWeather, list[
     -------
     CountyWeather
     list of Finding
-        "rain-missing", "rain-treated-as-zero", "station-far".
+        "rain-missing", "rain-treated-as-zero".
     """
     counties = case.table("counties")
     distance = great_circle_km(
@@ -75,10 +75,12 @@ def to_counties(case: Case, record: StationRecord) -> tuple[CountyWeather, list[
         day, county = day[within], county[within]
         if not len(day):
             break
-        value = record.values["rain_mm"][day, order[county, rank]]
+        lender = order[county, rank]
+        value = record.values["rain_mm"][day, lender]
         good = np.isfinite(value)
-        rain[day[good], county[good]] = value[good]
-        source[day[good], county[good]] = SOURCE["neighbour"]
+        day, county, lender = day[good], county[good], lender[good]
+        rain[day, county] = value[good]
+        source[day, county] = SOURCE["neighbour"] | record.source["rain_mm"][day, lender]  # a forecast stays one
     findings = _missing_rain(case, record, rain, source)
     gap = np.isnan(rain) | np.isnan(record.values["t_max_c"] + record.values["t_min_c"])[:, index]
     stopped = np.where(gap.any(axis=0), gap.argmax(axis=0), len(record.dates))

@@ -61,7 +61,7 @@ def pyranometer_findings(record: StationRecord) -> list[Finding]:
         _vapour_pressure(record),
         TURBIDITY,
     )
-    rs = record.values["rs_mj_m2_d"]
+    rs = np.where(record.forecast, np.nan, record.values["rs_mj_m2_d"])
     findings = []
     for station in range(record.shape[1]):
         if np.isfinite(rs[:, station] / clear[:, station]).sum() < LEAST_DAYS:

@@ -25,6 +25,7 @@ MEASURED = (
 )  # fmt: skip
 
 MORNING_OBSERVER_HOUR = 12.0
+READ_NEXT_MORNING = ("rain_mm", "t_max_c")  # what a morning observer reads belongs to the day before
 
 
 @dataclass(frozen=True)
@@ -57,6 +58,8 @@ class StationRecord:
     forecast : ndarray of bool, shape (day, station)
     row_of : ndarray of int, shape (day, station)
         Row of the weather table, -1 where there is none.
+    read_later : mapping of str to ndarray of int, shape (day, station)
+        The same for quantities that some stations read the morning after.
     fills : tuple of Fill
         What was filled and how.
     """
@@ -74,6 +77,7 @@ class StationRecord:
     source: Mapping[str, np.ndarray]
     forecast: np.ndarray
     row_of: np.ndarray
+    read_later: Mapping[str, np.ndarray] = field(default_factory=dict)
     fills: tuple[Fill, ...] = field(default=())
 
     @property
@@ -85,14 +89,22 @@ class StationRecord:
         """Station and day in words, for a finding."""
         return f"station {self.station_ids[station]}, {self.dates[day]}"
 
+    def row(self, name: str, day: int, station: int) -> int | None:
+        """Row of the weather table that holds a value; None where there is none."""
+        row = int(self.read_later.get(name, self.row_of)[day, station])
+        return row if row >= 0 else None
+
 
 def arrange(case: Case) -> StationRecord:
     """Lay the weather table out as (day, station) arrays.
 
     All days from the first to the last are there, missing ones NaN; the settings `season_start` and `season_end`
-    narrow them. Rows of unknown stations or without a date are left out and of two rows of one day the first counts
-    (the checks report both). At stations that are read in the morning, rain and highest temperature belong to the
-    day before and are moved there.
+    narrow them, or ask for more. Rows of unknown stations or without a date are left out and of two rows of one day
+    the first counts (the checks report both).
+
+    At stations that are read before noon, rain and highest temperature of a row belong to the day before and are
+    moved there; lowest temperature and all else stay. Such a station's last row therefore only completes the day
+    before it, and no day of the record rests on it alone.
 
     Parameters
     ----------
@@ -106,49 +118,31 @@ def arrange(case: Case) -> StationRecord:
     import pandas as pd
 
     stations, weather = case.table("stations"), case.table("weather")
-    ids = stations["station_id"].astype(str).to_numpy()
-    known, first_seen = np.unique(ids, return_index=True)
+    ids = _ids(stations["station_id"])
+    _, first_seen = np.unique(ids, return_index=True)
     keep = np.sort(first_seen)
     stations, ids = stations.iloc[keep], ids[keep]
+    morning = _column(stations, "observation_hour", 24.0) < MORNING_OBSERVER_HOUR
 
-    position = pd.Index(ids).get_indexer(pd.Index(weather["station_id"].astype(str)))
+    named = _ids(weather["station_id"])
+    position = np.where(named == "", -1, pd.Index(ids).get_indexer(pd.Index(named)))
     days = pd.to_datetime(weather["date"]).to_numpy().astype("datetime64[D]")
     rows = np.flatnonzero((position >= 0) & ~np.isnat(days))
-    dates = _calendar(days[rows], case)
-    start = dates[0] if len(dates) else np.datetime64("1970-01-01")
+    dates = _calendar(days[rows], days[rows] - morning[position[rows]].astype("timedelta64[D]"), case)
+    row_of = _rows_by_day(rows, days[rows], position[rows], dates, len(ids))
 
-    # one day more than asked for, so that a morning observer's last reading reaches its day
-    count = len(dates)
-    day = (days[rows] - start).astype(int)
-    inside = (day >= 0) & (day <= count)
-    rows, day, station = rows[inside], day[inside], position[rows[inside]]
-    row_of = np.full((count + 1, len(ids)), -1)
-    _, first = np.unique(day * len(ids) + station, return_index=True)  # the first of two rows counts
-    row_of[day[first], station[first]] = rows[first]
-
-    there = row_of >= 0
-    values = {}
+    later = row_of.copy()
+    later[:-1, morning] = row_of[1:, morning]
+    later[-1, morning] = -1
+    row_of, later = row_of[: len(dates)], later[: len(dates)]
+    read_later = dict.fromkeys(READ_NEXT_MORNING, later) if morning.any() else {}
+    told = weather["forecast"].map(lambda word: word is True or word == 1) if "forecast" in weather else None
+    values, source = {}, {}
     for name in MEASURED:
-        column = np.full(row_of.shape, np.nan)
-        if name in weather:
-            column[there] = weather[name].to_numpy(dtype=float, na_value=np.nan)[row_of[there]]
-        values[name] = column
-    morning = _column(stations, "observation_hour", 24.0) < MORNING_OBSERVER_HOUR
-    for name in ("rain_mm", "t_max_c"):
-        values[name][:-1, morning] = values[name][1:, morning]
-    forecast = np.zeros(row_of.shape, dtype=bool)
-    if "forecast" in weather:
-        told = weather["forecast"].map(lambda word: word is True or word == 1).to_numpy(dtype=bool)
-        forecast[there] = told[row_of[there]]
-
-    values = {name: column[:count] for name, column in values.items()}
-    forecast = forecast[:count]
-    source = {
-        name: np.where(
-            np.isfinite(column), np.where(forecast, SOURCE["forecast"], SOURCE["measured"]), SOURCE["missing"]
-        ).astype(np.uint8)
-        for name, column in values.items()
-    }
+        at = read_later.get(name, row_of)
+        values[name] = _at_rows(weather.get(name), at)
+        label = np.where(_at_rows(told, at) == 1.0, SOURCE["forecast"], SOURCE["measured"])
+        source[name] = np.where(np.isfinite(values[name]), label, SOURCE["missing"]).astype(np.uint8)
     return StationRecord(
         dates=dates,
         station_ids=tuple(ids),
@@ -161,21 +155,51 @@ def arrange(case: Case) -> StationRecord:
         coast=_words(stations, "situation") == "coast",
         values=values,
         source=source,
-        forecast=forecast,
-        row_of=row_of[:count],
+        forecast=_at_rows(told, row_of) == 1.0,
+        row_of=row_of,
+        read_later=read_later,
     )
 
 
-def _calendar(days: np.ndarray, case: Case) -> np.ndarray:
-    """Every day from the first to the last, narrowed by the settings."""
+def _ids(column: pd.Series) -> np.ndarray:
+    """Ids as text, blanks empty."""
+    return column.fillna("").astype(str).to_numpy(dtype=object)
+
+
+def _calendar(days: np.ndarray, completed: np.ndarray, case: Case) -> np.ndarray:
+    """Every day from the first row to the last day that a row completes, as narrowed by the settings."""
     first = np.datetime64(case.settings.season_start, "D") if case.settings.season_start else None
     last = np.datetime64(case.settings.season_end, "D") if case.settings.season_end else None
     if len(days):
         first = days.min() if first is None else first
-        last = days.max() if last is None else last
+        last = max(completed.max(), days.min()) if last is None else last
     if first is None or last is None or last < first:
         return np.empty(0, dtype="datetime64[D]")
     return np.arange(first, last + np.timedelta64(1, "D"))
+
+
+def _rows_by_day(
+    rows: np.ndarray, days: np.ndarray, station: np.ndarray, dates: np.ndarray, stations: int
+) -> np.ndarray:
+    """Row of each day and station, -1 for none; one day more than asked for, for what is read the morning after."""
+    row_of = np.full((len(dates) + 1, stations), -1)
+    if len(dates):
+        day = (days - dates[0]).astype(int)
+        inside = (day >= 0) & (day <= len(dates))
+        rows, day, station = rows[inside], day[inside], station[inside]
+        _, first = np.unique(day * stations + station, return_index=True)  # the first of two rows counts
+        row_of[day[first], station[first]] = rows[first]
+    return row_of
+
+
+def _at_rows(column: pd.Series | None, row_of: np.ndarray) -> np.ndarray:
+    """Numbers of a column where `row_of` says; NaN where there is none."""
+    found = np.full(row_of.shape, np.nan)
+    if column is not None:
+        there = row_of >= 0
+        numbers = column.to_numpy(dtype=float, na_value=np.nan)
+        found[there] = np.where(np.isfinite(numbers), numbers, np.nan)[row_of[there]]
+    return found
 
 
 def _column(stations: pd.DataFrame, name: str, default: float) -> np.ndarray:

@@ -65,6 +65,41 @@ def test_far_stations_do_not_serve(make):
     assert [finding.code for finding in findings] == ["rain-missing"]
 
 
+def test_a_neighbour_s_forecast_rain_is_still_a_forecast(make):
+    rows = _blank(make.weather(), ["near"])
+    rows["forecast"] = rows["date"] >= "2031-06-15"
+    local, findings, _ = _local(make, rows)
+    assert findings == []
+    assert local.rain_source[8:20, 0].tolist() == [0, 0, 1, 1, 1, 1, 17, 17, 17, 17, 17, 16]
+
+
+def test_each_blank_day_takes_the_nearest_station_that_has_rain(make):
+    rows = _blank(_blank(make.weather(), ["near"]), ["by"], "2031-06-15", "2031-06-16")
+    local, findings, record = _local(make, rows, settings={"rain_neighbour_km": 200.0}, counties=make.counties()[:1])
+    assert [finding.code for finding in findings] == ["rain-missing"]
+    lender = np.ones(9, dtype=int)
+    lender[4:6] = 2  # serves only where the setting reaches it
+    far = weather.great_circle_km([42.02], [-93.0], [44.5], [-93.0]).item()
+    assert far > 200.0
+    assert np.isnan(local.rain_mm[[14, 15], 0]).all()
+    wide, _, _ = _local(make, rows, settings={"rain_neighbour_km": far + 1.0}, counties=make.counties()[:1])
+    assert np.array_equal(wide.rain_mm[10:19, 0], record.values["rain_mm"][np.arange(10, 19), lender])
+
+
+def test_gauge_covers_only_its_days(make):
+    rows = _blank(make.weather(), ["near", "by"])
+    days = pd.date_range("2031-06-11", "2031-06-14")
+    gauges = pd.DataFrame({"county_id": "c1", "date": days, "rain_mm": [0.0, 4.0, 0.0, 1.5]})
+    local, findings, _ = _local(make, rows, rain_gauges=gauges)
+    assert local.rain_mm[10:14, 0].tolist() == [0.0, 4.0, 0.0, 1.5]
+    assert (local.rain_source[10:14, 0] == 0).all()
+    assert local.season_end.tolist() == [14, 60]
+    assert [(f.code, f.table, f.row, f.quantity, f.value) for f in findings] == [
+        ("rain-missing", "counties", 0, "county_id", "c1")
+    ]
+    assert "5 days without rain data, first 2031-06-15" in findings[0].detail
+
+
 def test_own_gauge_wins(make):
     gauges = pd.DataFrame(
         {"county_id": ["c1", "c1", "nobody"], "date": pd.to_datetime(["2031-06-11", "2031-06-12", "2031-06-12"]),

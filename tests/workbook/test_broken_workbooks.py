@@ -245,10 +245,17 @@ BROKEN = [
     Broken(
         "temperature unit swapped",
         put("Weather", C3="Highest temperature (°F)", D3="Lowest temperature (°F)"),
-        {("Weather", f"I{row}", "dew-point-above-t-max") for row in range(4, 64)}
-        | {("Weather", "C3", "unit-other-system"), ("Weather", "I3", "dew-point-against-t-min")},
+        {
+            ("Weather", "C3", "unit-other-system"),
+            ("Weather", "C3", "unit-suspected"),
+            ("Weather", "D3", "unit-suspected"),
+        },
     ),
-    Broken("rain in inches by heading", put("Weather", O3="Rain (in)"), {("Weather", "O3", "unit-other-system")}),
+    Broken(
+        "rain in inches by heading",
+        put("Weather", O3="Rain (in)"),
+        {("Weather", "O3", "unit-other-system"), ("Weather", "O3", "unit-suspected")},
+    ),
     Broken(
         "area in acres by heading",
         put("Counties", F3="Area (acres)"),
