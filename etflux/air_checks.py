@@ -44,7 +44,9 @@ def check(case: Case) -> list[Finding]:
         *_profiles(case.table("profiles")),
         *_mixing_depths(case.table("mixing_depths"), case.settings),
         *_wind(case.table("wind")),
-    ]
+        *_at("background_air", case.table("background_air"), "row-repeated", "date",
+             _repeated(case.table("background_air"), ["date"]), "background air"),
+    ]  # fmt: skip
 
 
 def _column(rows: pd.DataFrame, name: str) -> np.ndarray:

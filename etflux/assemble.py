@@ -265,7 +265,9 @@ def county_daily(
     transpiration, evaporation = mean("transpiration_mm"), mean("evaporation_mm") + loss
     et = transpiration + evaporation
     t_mean = record.values["t_mean_c"][:, place]
-    daylight = solar.daylight_hours(table["latitude_deg"].to_numpy(float), solar.day_of_year(record.dates)[:, None])
+    julian = solar.day_of_year(record.dates)[:, None]
+    daylight = solar.daylight_hours(table["latitude_deg"].to_numpy(float), julian)
+    clock = solar.clock_from_solar(0.0, julian, table["longitude_deg"].to_numpy(float), record.utc_offset_h[place])
     flux = counties.latent_flux
     dims = ("date", "county_id")
     found = {
@@ -284,6 +286,7 @@ def county_daily(
         "represented_pct": np.broadcast_to(100.0 * stand_area / area, et.shape),
         "estimated_share_pct": _county_estimated(record, local),
         "provisional": _county_provisional(units, stand, index, n),
+        "clock_minus_solar_h": clock,
     }
     by_tag = np.stack([flux(water[name], t_mean) for name in sources], axis=-1)
     ids = table["county_id"].astype(str).to_numpy(object)
@@ -359,6 +362,7 @@ def air_inputs(
         sites=profiles.site_profiles(case.table("profiles")),
         dew_point_afternoon_c=v["dew_point_afternoon_c"][:, place],
         u2_m_s=v["u2_m_s"][:, place],
+        background_dew_point_c=airmass.given_background(case.table("background_air"), record.dates),
         transpiration_mm=np.stack([moved.get(name, np.zeros_like(local.rain_mm)) for name in water], axis=-1),
         **_wind(case, record, ids),
     )
@@ -382,7 +386,13 @@ def with_air(county: xr.Dataset, air: AirResults) -> xr.Dataset:
     dims = ("date", "county_id")
     found = county.drop_vars("ground_cover").assign({name: (dims, values) for name, values in air.county.items()})
     found = found.assign_coords(hour=air.hours)
-    return found.assign({f"hourly_{name}": ((*dims, "hour"), values) for name, values in air.hourly.items()})
+    found = found.assign({f"hourly_{name}": ((*dims, "hour"), values) for name, values in air.hourly.items()})
+    if air.profiles is None:
+        return found
+    found = found.assign_coords(profile_date=county["date"].to_numpy()[-len(air.profiles) :])
+    names = ("profile_height_m", "profile_theta_c", "profile_humidity_g_kg", "profile_humidity_without_g_kg")
+    layers = ("profile_date", "county_id", "layer")
+    return found.assign({name: (layers, air.profiles[:, place]) for place, name in enumerate(names)})
 
 
 def budget_table(stand: xr.Dataset, county: xr.Dataset, air: AirResults) -> pd.DataFrame:

@@ -88,6 +88,7 @@ TABLES: Mapping[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
         ("county_id", "date"),
         ("day_part", "height_m", "wind_speed_m_s", "wind_from_deg", "u_m_s", "v_m_s"),
     ),
+    "background_air": (("date", "background_dew_point_c"), ()),
 }  # fmt: skip
 
 

@@ -57,7 +57,7 @@ OF_HABIT = {
 OF_GREEN_UP = ("len_ini_d", "len_dev_d")
 # Ranges that another check knows better.
 RANGED_ELSEWHERE = {("wind", "wind_from_deg"), ("mixing_depths", "hour")}
-DATED = ("rain_gauges", "irrigation_events", "observations", "mixing_depths", "wind")
+DATED = ("rain_gauges", "irrigation_events", "observations", "mixing_depths", "wind", "background_air")
 
 
 def case_findings(case: Case, unread: Unread = frozenset()) -> list[Finding]:

@@ -72,13 +72,17 @@ def run(
     file: Annotated[Path, typer.Argument(help="Filled workbook.")],
     output: Annotated[Path | None, typer.Option("-o", "--output", help="Folder for the results.")] = None,
     on: Annotated[str | None, typer.Option("--on", help="Day of the brief, as 2031-07-26.")] = None,
+    draws: Annotated[
+        int | None,
+        typer.Option("--draws", min=0, max=10000, help="Random draws for 10, 50 and 90 % bands of what crops added."),
+    ] = None,
     quiet: Annotated[bool, typer.Option("-q", "--quiet", help="Print nothing unless something is wrong.")] = False,
 ) -> None:
     """Compute crop water use and its moisture in the air, and write the brief and the tables."""
     from etflux.workbook.job import results_folder, run_workbook, summary_text
 
     with _progress(quiet) as progress:
-        results = run_workbook(file, output=output, on=on, progress=progress)
+        results = run_workbook(file, output=output, on=on, progress=progress, draws=draws)
     if not quiet:
         print(summary_text(results, on=on, folder=results_folder(file, output)))
 

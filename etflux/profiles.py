@@ -288,9 +288,9 @@ def _standard_heights(t_min_c: np.ndarray, t_max_c: np.ndarray, pressure_kpa: np
     return kelvin / lapse * (1.0 - ratio ** (GAS_CONSTANT_DRY * lapse / GRAVITY))
 
 
-def background_humidity(pressure_kpa: np.ndarray, settings: Settings) -> np.ndarray:
-    """Humidity of air that no crop has moistened, shape (county, layer). [kg kg-1]"""
-    e = humidity.vapour_pressure_from_dew_point(settings.background_dew_point_c)
+def background_humidity(pressure_kpa: np.ndarray, dew_point_c: float, settings: Settings) -> np.ndarray:
+    """Humidity of air that no crop has moistened, of a dew point at the ground, shape (county, layer). [kg kg-1]"""
+    e = humidity.vapour_pressure_from_dew_point(dew_point_c)
     ground = humidity.specific_humidity(e, pressure_kpa)[:, None]
     middle = 0.5 * (EDGES[:-1] + EDGES[1:])
     height = middle / 1.1  # near enough: about 1.1 kg m-3 in the lowest kilometres

@@ -7,6 +7,7 @@ import sys
 from pathlib import Path
 
 import numpy as np
+import openpyxl
 import pandas as pd
 import pytest
 import xarray as xr
@@ -14,8 +15,10 @@ import xarray as xr
 import etflux
 from etflux import assemble, counties, humidity, workbook
 from etflux.case import Case, with_settings
+from etflux.results.summary import CONFIDENCE
 from etflux.run import run_case
 from etflux.workbook.job import moved_days, run_workbook
+from etflux.workbook.report_words import WORLD_SENTENCES
 
 EXAMPLES = Path(__file__).parents[1] / "station_examples"
 BASIN, COUNTY = EXAMPLES / "harrowbend.xlsx", EXAMPLES / "tallgrove_us.xlsx"
@@ -212,3 +215,151 @@ def test_rerun_lists_the_days_that_moved(tmp_path):
     moved = moved_days(wetter, folder)
     changed = np.abs(wetter.stand["et_mm"] - first.stand["et_mm"]) > 0.2
     assert len(moved) == int(changed.sum()) > 10
+
+
+def test_the_morning_air_by_layer_carries_what_the_table_says_was_carried(written):
+    """Mixed to the depth of the afternoon the morning's crop water gives the carried part of the contribution."""
+    _, results = written
+    county = results.county
+    day = np.datetime64("2031-07-20")
+    air = results.air_profiles
+    assert set(air["date"].unique()) == set(county["date"].to_numpy())
+    today = air[(air["date"] == day)].set_index("county_id")
+    crops = (today["humidity_g_kg"] - today["humidity_without_g_kg"]).groupby("county_id").mean()
+    assert (today["humidity_without_g_kg"] >= 0.0).all()
+    assert (today["humidity_without_g_kg"] <= today["humidity_g_kg"] + 1e-6).all()
+    carried = county["contribution_carried_c"].sel(date=day).to_pandas()
+    assert (crops[carried.index][carried > 0.05] > 0.0).all()
+    height = today["height_m"].to_numpy().reshape(-1, county.sizes["layer"])
+    assert (np.diff(height, axis=1) > 0.0).all()
+
+
+def test_wind_and_clock_of_every_county_day(written):
+    """West of its meridian the sun is late: noon by the sun comes after noon by the clock."""
+    _, results = written
+    county = results.county
+    speed = np.hypot(county["wind_east_m_s"], county["wind_north_m_s"])
+    assert (np.isfinite(speed) == np.isfinite(county["crossing_h"])).all()
+    late = county["clock_minus_solar_h"]
+    per_degree = (late.isel(county_id=0) - late.isel(county_id=-1)) / (
+        county["longitude_deg"].isel(county_id=-1) - county["longitude_deg"].isel(county_id=0)
+    )
+    assert np.allclose(per_degree, 1.0 / 15.0)
+    assert ((county["longitude_deg"] < -90.0) == (late.mean("date") > 0.0)).all()
+
+
+@pytest.fixture(scope="module")
+def air_sheets(written):
+    """Values of the sheets on the air by sheet, as the rows below their headings, and the lines above."""
+    book = openpyxl.load_workbook(written[0] / "results.xlsx", read_only=True)
+    found = {}
+    for title in ("Crop moisture", "How sure", "Hour by hour", "Who moistens whom", "Other worlds"):
+        rows = list(book[title].iter_rows(values_only=True))
+        top = next(place for place, row in enumerate(rows) if row[0] == "County")
+        blocks = pd.Series(rows[top - 1]).ffill().fillna("")
+        names = [f"{block}|{name}" for block, name in zip(blocks, rows[top], strict=False)]
+        found[title] = (pd.DataFrame(rows[top + 1 :], columns=names), [str(row[0]) for row in rows[:top] if row[0]])
+    return found
+
+
+DAY = pd.Timestamp("2031-07-27")
+
+
+def test_crop_moisture_sheet_adds_up_by_crop_and_by_day_it_left(written, air_sheets):
+    rows, lines = air_sheets["Crop moisture"]
+    total = rows["Afternoon|Crops added (°C)"].astype(float)
+    for block in ("Which crop", "When it left the ground"):
+        part = rows[[name for name in rows if name.startswith(block)]].astype(float).sum(axis=1)
+        assert part.to_numpy() == pytest.approx(total.to_numpy(), abs=0.01)
+    here = "Where it left the ground|"
+    places = rows[here + "this county (°C)"].astype(float) + rows[here + "other counties (°C)"].astype(float)
+    assert places.to_numpy() == pytest.approx(total.to_numpy(), abs=0.01)
+    assert total.is_monotonic_decreasing  # most first
+    county = written[1].county["contribution_c"].sel(date=DAY).to_series()
+    assert total.to_numpy() == pytest.approx(county[rows.iloc[:, 0]].to_numpy(), abs=1e-3)
+    assert any(line.startswith("27 July 2031 at 15 h local solar time") for line in lines)
+
+
+def test_who_moistens_whom_sheet_gives_every_county_its_crops_share(written, air_sheets):
+    rows, _ = air_sheets["Who moistens whom"]
+    origins = rows[[name for name in rows if name.startswith("Crops of")]].astype(float)
+    assert origins.shape == (24, 24)
+    added = written[1].county["contribution_c"].sel(date=DAY).to_series()[rows.iloc[:, 0]]
+    assert origins.sum(axis=1).to_numpy() == pytest.approx(added.to_numpy(), abs=0.05)  # rows under 1e-4 g/kg left out
+    own = np.diag(origins.to_numpy())
+    home = written[1].county["contribution_home_c"].sel(date=DAY).to_series()[rows.iloc[:, 0]]
+    assert own == pytest.approx(home.to_numpy(), abs=0.05)
+
+
+def test_how_sure_sheet_has_the_least_certain_first_and_says_what_the_band_is(written, air_sheets):
+    rows, lines = air_sheets["How sure"]
+    order = {word: code for code, word in CONFIDENCE.items()}
+    assert rows["|How sure"].map(order).is_monotonic_increasing
+    low, high = (rows[f"Depth ± 25 %|{end} (°C)"].astype(float) for end in ("lowest", "highest"))
+    base = rows["|Crops added (°C)"].astype(float)
+    assert (low <= base + 0.01).all()
+    assert (high >= base - 0.01).all()
+    assert "not the error of the method" in " ".join(lines)
+
+
+def test_each_other_world_is_defined_where_it_is_shown(written, air_sheets):
+    rows, lines = air_sheets["Other worlds"]
+    for sentence in WORLD_SENTENCES.values():
+        assert sentence in lines
+    effect = rows["Rest's cover on every stand|Dew point, this world more by (°C)"].astype(float)
+    here, there = rows["This world|Dew point (°C)"], rows["Rest's cover on every stand|Dew point (°C)"]
+    assert effect.to_numpy() == pytest.approx((here.astype(float) - there.astype(float)).to_numpy(), abs=0.01)
+    assert np.nanmin(effect.to_numpy(float)) > 0.0  # in late July crops use more water than grazed grass
+
+
+def test_hour_by_hour_sheet_is_the_table_of_hours_by_solar_and_clock_time(written, air_sheets):
+    rows, _ = air_sheets["Hour by hour"]
+    table = pd.read_csv(written[0] / "county_hours.csv")
+    table = table[table["date"] == "2031-07-27"]
+    assert len(rows) == len(table)
+    assert rows["Mixed air|Dew point of the mixed air (°C)"].to_numpy(float) == pytest.approx(
+        table["dew_point_mixed_c"].to_numpy(), abs=1e-3
+    )
+    minutes = [int(text[:2]) * 60 + int(text[3:]) for text in rows["|Clock time"]]
+    assert minutes == [round(60.0 * hour) for hour in table["clock_h"]]
+    noon = table[(table["county_id"] == "HB01") & (table["hour"] == 12)]["contribution_c"].item()
+    daily = pd.read_csv(written[0] / "county_daily.csv")
+    daily = daily[(daily["county_id"] == "HB01") & (daily["date"] == "2031-07-27")]
+    assert daily["contribution_12_c"].item() == pytest.approx(noon)
+
+
+def test_background_air_of_a_day_bounds_what_crops_can_have_added(basin):
+    """Moister background air leaves less room for water that crops can have put there on the days before."""
+    days = pd.DatetimeIndex(basin.table("weather")["date"].unique())
+    given = pd.DataFrame({"date": days, "background_dew_point_c": 18.0})
+    moist = Case(basin.settings, {**basin.tables, "background_air": given}, basin.source)
+    plain = run_case(without_extras(basin)).county
+    other = run_case(without_extras(moist)).county
+    july = slice("2031-07-10", "2031-07-31")
+    carried = [float(found["contribution_carried_c"].sel(date=july).mean()) for found in (plain, other)]
+    assert carried[1] < carried[0]
+
+
+def test_draws_give_bands_around_the_estimate_and_the_same_for_the_same_seed(basin):
+    small = without_extras(basin)
+    few = Case(with_settings(small.settings, air_draws=12), small.tables, small.source)
+    found = run_case(few).county
+    low, middle, high = (found[f"contribution_p{share}_c"].to_numpy() for share in (10, 50, 90))
+    there = np.isfinite(low) & np.isfinite(high)
+    assert there.sum() > 1000
+    assert (low[there] <= middle[there]).all()
+    assert (middle[there] <= high[there]).all()
+    base = found["contribution_c"].to_numpy()
+    assert np.mean((low <= base)[there] & (base <= high)[there]) > 0.8
+    again = run_case(few).county
+    np.testing.assert_array_equal(again["contribution_p90_c"], found["contribution_p90_c"])
+    other = run_case(Case(with_settings(few.settings, air_seed=2), few.tables, few.source)).county
+    assert not np.array_equal(other["contribution_p90_c"], found["contribution_p90_c"], equal_nan=True)
+
+
+def without_extras(case: Case) -> Case:
+    """The case without other worlds and ranges, which take most of the time, and of June and July alone."""
+    settings = with_settings(
+        case.settings, air_worlds=False, air_ranges=False, season_start="2031-06-01", season_end="2031-07-31"
+    )
+    return Case(settings, case.tables, case.source)

@@ -50,6 +50,8 @@ class AirInputs:
         The part of `water_mm` that passed through plants: the range of Kcb moves it.
     water_without_crops_mm : ndarray, optional
         Water of a county whose stands have the rest's cover. Where it is missing the rest's own depth stands in.
+    background_dew_point_c : ndarray, shape (day,), optional
+        Of air that no crop has moistened; NaN on days that take the setting.
     """
 
     dates: np.ndarray
@@ -80,6 +82,7 @@ class AirInputs:
     u2_m_s: np.ndarray | None = None
     transpiration_mm: np.ndarray | None = None
     water_without_crops_mm: np.ndarray | None = None
+    background_dew_point_c: np.ndarray | None = None
 
     @property
     def is_crop(self) -> np.ndarray:
@@ -116,6 +119,9 @@ class AirResults:
         Crop water over each county by the county that it left.
     ranges : dict of ndarray, shape (2, day, county)
         Lowest and highest contribution by what was varied. [degC]
+    profiles : ndarray, shape (day, 4, county, layer), or None
+        Morning air of the last days: height of the layers' middles [m], potential temperature [degC], humidity and
+        humidity without the crops' water [g kg-1].
     """
 
     county: dict[str, np.ndarray]
@@ -127,6 +133,7 @@ class AirResults:
     ledger: dict[str, np.ndarray] = field(default_factory=dict)
     origins_g_kg: np.ndarray | None = None
     ranges: dict[str, np.ndarray] = field(default_factory=dict)
+    profiles: np.ndarray | None = None
 
 
 def given_depths(table: pd.DataFrame, dates: np.ndarray, county_ids: tuple[str, ...]) -> tuple[np.ndarray, np.ndarray]:
@@ -153,6 +160,18 @@ def given_depths(table: pd.DataFrame, dates: np.ndarray, county_ids: tuple[str, 
         depth[day[rows], chosen] = value[rows][spread]
         hour[day[rows], chosen] = at[rows][spread]
     return depth, hour
+
+
+def given_background(table: pd.DataFrame, dates: np.ndarray) -> np.ndarray | None:
+    """Entered dew points of air that no crop has moistened, (day,); None where there are none. [degC]"""
+    if not len(table):
+        return None
+    days = table["date"].to_numpy().astype("datetime64[D]")
+    place = (days - dates[0]).astype(int) if len(dates) else np.empty(0, int)
+    found = np.full(len(dates), np.nan)
+    inside = (place >= 0) & (place < len(dates))
+    found[place[inside]] = table["background_dew_point_c"].to_numpy(float)[inside]
+    return found
 
 
 @dataclass(frozen=True)

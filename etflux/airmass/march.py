@@ -53,6 +53,8 @@ class Course:
         Share of yesterday's air that is still there; None on the first day.
     carried : ndarray, shape (row, active layer)
         All tags at sunrise.
+    crops_carried : ndarray, shape (row, active layer)
+        Those of the crops.
     ledger : dict of ndarray, shape (source,)
         Where tagged water came from and went, `MIXED` and `ALOFT` at the end of the night. [10^6 kg]
     wind : Hour or None
@@ -68,6 +70,7 @@ class Course:
     theta_k: np.ndarray
     kept: np.ndarray | None
     carried: np.ndarray
+    crops_carried: np.ndarray
     ledger: Ledger
     wind: Hour | None
 
@@ -110,7 +113,7 @@ class March:
         self.hooks = hooks or Hooks()
         self.counties = len(inputs.area_km2)
         self.fetch = fetch_weights(inputs.latitude_deg, inputs.longitude_deg, inputs.area_km2, settings.heat_fetch_km)
-        self.background = mornings.background(inputs.pressure_kpa, settings)
+        self.background = np.empty(0)  # of the day, (layer,)
         self.stepper = Stepper(layout, len(members), self.counties, inputs.area_km2)
         self.transport = None if inputs.region is None or inputs.winds is None else Transport(inputs.region)
         self._sky: tuple[int, Sky] | None = None
@@ -134,19 +137,21 @@ class March:
 
     def _one_day(self, number: int) -> Course:
         day, ledger = day_of(self.inputs, number, self.members), Ledger()
+        self.background = mornings.background(self.inputs, number, self.settings)
         morning, kept = self._morning(day)
         of_day = self.hooks.heat
         energy, depths = self.energy_and_depths(day, morning) if of_day is None else of_day(self, day, morning)
         state = self._begin(day, morning, energy, depths, kept, ledger)
-        carried = state.moved[:, :, self.layout.tags].sum(axis=2)
+        tags = state.moved[:, :, self.layout.tags]
+        carried, of_crops = tags.sum(axis=2), tags[:, :, self.layout.crop_tags].sum(axis=2)
         hours = self._hours(number, "day")
         state, values, home = self._daylight(day, energy, depths, state, hours, ledger)
         state = self._night(day, state, ledger)
         self._stock(state, depths, ledger)
         self.state, self.evening = state, Evening(depths.evening_m, day.t_max_c)
         return Course(
-            day, morning, energy, depths, values, home, mixed_theta(morning, energy, depths), kept, carried, ledger,
-            None if hours is None else hours[0],
+            day, morning, energy, depths, values, home, mixed_theta(morning, energy, depths), kept, carried, of_crops,
+            ledger, None if hours is None else hours[0],
         )  # fmt: skip
 
     def _morning(self, day: Day) -> tuple[Morning, np.ndarray | None]:

@@ -67,9 +67,11 @@ def morning_of(inputs: AirInputs, day: Day, before: Evening | None, settings: Se
     return Morning(found.theta_k, found.q_kg_kg, found.start_hour, flags, found.distance_km)
 
 
-def background(pressure_kpa: np.ndarray, settings: Settings) -> np.ndarray:
+def background(inputs: AirInputs, day: int, settings: Settings) -> np.ndarray:
     """Humidity of air that no crop has moistened, one profile for the whole region, shape (layer,). [kg kg-1]"""
-    return profiles.background_humidity(np.array([np.mean(pressure_kpa)]), settings)[0]
+    given = np.nan if inputs.background_dew_point_c is None else inputs.background_dew_point_c[day]
+    dew_point = settings.background_dew_point_c if np.isnan(given) else float(given)
+    return profiles.background_humidity(np.array([np.mean(inputs.pressure_kpa)]), dew_point, settings)[0]
 
 
 def kept_share(q_observed: np.ndarray, q_modelled: np.ndarray, floor: np.ndarray) -> np.ndarray:

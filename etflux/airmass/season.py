@@ -24,8 +24,10 @@ if TYPE_CHECKING:
     from etflux.case import Settings
 
 ORIGINS_UP_TO = 300  # counties: beyond, only home and other are told apart
+PROFILES_UP_TO = 10_000  # morning columns that are kept; of a long run over many counties, the last days
 PEAK_FROM_HOUR = 9  # the highest dew point is looked for from here to sunset
 EXTRA_WORK = 0.4  # share of the work in the other worlds and the ranges
+LONG_WORK = 0.9  # share of the work in the random draws
 
 
 def season(inputs: AirInputs, settings: Settings, progress: Callable[[float], None] | None = None) -> AirResults:
@@ -52,6 +54,8 @@ def season(inputs: AirInputs, settings: Settings, progress: Callable[[float], No
     )  # fmt: skip
     found: dict[str, np.ndarray] = {}
     ledgers: list[dict[str, np.ndarray]] = []
+    profiles: list[np.ndarray] = []
+    first_profile = max(0, n_days - max(1, PROFILES_UP_TO // max(counties, 1)))
     real = RealDays()
     extra = settings.air_worlds or settings.air_ranges
     for course in March(inputs, settings, layout):
@@ -60,23 +64,40 @@ def season(inputs: AirInputs, settings: Settings, progress: Callable[[float], No
                 found[name] = np.empty((n_days, *values.shape), values.dtype)
             found[name][course.day.number] = values
         ledgers.append(course.ledger)
+        if course.day.number >= first_profile:
+            profiles.append(_profile(course))
         if settings.air_worlds:
             real.keep(course)
-        tell(len(ledgers) / n_days * (1.0 - EXTRA_WORK * extra))
+        tell(len(ledgers) / n_days * (1.0 - EXTRA_WORK * extra) * (1.0 - LONG_WORK * (settings.air_draws > 0)))
     if found:
         rise.add_bias(found)
     if settings.air_worlds and found:
         found |= worlds.effects(inputs, settings, real, found)
         real.clear()
     spread = ranges.spread(inputs, settings, found) if settings.air_ranges and found else {}
+    if settings.air_draws and found:
+        found |= _bands(inputs, settings, found, lambda share: tell(1.0 - LONG_WORK * (1.0 - share)))
     tell(1.0)
     ledger = {term: np.stack([day.get(term, np.zeros(layout.sources)) for day in ledgers]) for term in _terms(ledgers)}
     hourly = {name[7:]: found.pop(name) for name in list(found) if name.startswith("hourly_")}
     tags = {name[4:]: found.pop(name) for name in list(found) if name.startswith("tag_")}
     origins = found.pop("origins_g_kg", None)
     return AirResults(
-        found, tags, HOURS[1:-1], hourly, inputs.sources, budget_rows(inputs, ledger), ledger, origins, spread
-    )
+        found, tags, HOURS[1:-1], hourly, inputs.sources, budget_rows(inputs, ledger), ledger, origins, spread,
+        np.stack(profiles) if profiles else None,
+    )  # fmt: skip
+
+
+def _bands(
+    inputs: AirInputs, settings: Settings, found: dict[str, np.ndarray], tell: Callable[[float], None]
+) -> dict[str, np.ndarray]:
+    """Contribution that 10, 50 and 90 % of the random draws do not exceed; blank where the contribution is."""
+    bands = ranges.monte_carlo(inputs, settings, settings.air_draws, settings.air_seed, tell)
+    shown = np.isfinite(found["contribution_c"])
+    return {
+        f"contribution_p{share}_c": np.where(shown, band, np.nan)
+        for share, band in zip((10, 50, 90), bands, strict=True)
+    }
 
 
 def _terms(ledgers: list[dict[str, np.ndarray]]) -> list[str]:
@@ -97,6 +118,7 @@ def _one_day(inputs: AirInputs, settings: Settings, layout: Layout, course: Cour
         "replaced_share": np.full(len(pressure), np.nan) if course.kept is None else replaced_share(course.kept),
         "profile_distance_km": course.morning.distance_km,
         "crossing_h": np.full(len(pressure), np.nan if course.wind is None else course.wind.crossing_h),
+        **_wind_of_day(inputs, course),
     }
     found |= rise.terms(inputs, course, found, hour)
     found["flags"] = flags_of(inputs, settings, course, found, hour)
@@ -109,6 +131,23 @@ def _one_day(inputs: AirInputs, settings: Settings, layout: Layout, course: Cour
             found[name] = np.where(blank.reshape(-1, *(1,) * (values.ndim - 1)), np.nan, values)
     found["confidence_code"] = confidence(found)
     return found | {f"hourly_{name}": values[:, 1:-1] for name, values in by_hour.items() if name[0] != "_"}
+
+
+def _wind_of_day(inputs: AirInputs, course: Course) -> dict[str, np.ndarray]:
+    """Daytime wind that moved the air, (county,); NaN on days without."""
+    wind = None if inputs.winds is None else inputs.winds.of(course.day.number, "day")
+    east, north = (np.full(len(inputs.area_km2), np.nan),) * 2 if wind is None else wind
+    return {"wind_east_m_s": east, "wind_north_m_s": north}
+
+
+def _profile(course: Course) -> np.ndarray:
+    """Morning air by layer: height, potential temperature, humidity, humidity without crops; (4, county, layer)."""
+    height = course.depths.heights
+    theta, q = course.morning.theta_k - FREEZING_K, course.morning.q_kg_kg
+    crops = np.zeros_like(q)
+    crops[:, : course.crops_carried.shape[1]] = course.crops_carried
+    middle = 0.5 * (height[:, 1:] + height[:, :-1])
+    return np.stack([middle, theta, 1000.0 * q, 1000.0 * np.maximum(q - crops, 0.0)]).astype(np.float32)
 
 
 def _by_hour(layout: Layout, course: Course, pressure: np.ndarray) -> dict[str, np.ndarray]:
@@ -125,7 +164,9 @@ def _by_hour(layout: Layout, course: Course, pressure: np.ndarray) -> dict[str, 
         "dew_point_mixed_c": dew,
         "theta_mixed_c": theta,
         "rh_mixed_pct": np.minimum(humidity.relative_humidity(e, theta), 100.0),
+        "humidity_mixed_g_kg": 1000.0 * q,
         "contribution_c": column.contribution(q, crops, pressure[:, None]),
+        "contribution_g_kg": 1000.0 * crops,
         "_q": q,
         "_crops": crops,
     }

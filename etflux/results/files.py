@@ -213,7 +213,7 @@ def _written(values: pd.Series, exact: bool) -> list[str]:
         numbers = values.to_numpy() if exact else values.to_numpy().round(DECIMALS) + 0.0  # no minus zero
         return ["" if number != number else repr(number) for number in numbers.tolist()]
     if values.dtype.kind in "iu":
-        return list(map(str, values.tolist()))
+        return ["" if number is pd.NA else str(number) for number in values.tolist()]
     free = name in tables.free_text()
     made = {value: _quoted(value, free) for value in set(values)}
     return [made[value] for value in values]

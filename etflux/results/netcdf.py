@@ -130,8 +130,8 @@ def _masks(registry: str, kind: DTypeLike) -> dict[str, Any]:
 def _encoding(dataset: xr.Dataset) -> dict[str, dict[str, Any]]:
     encoding: dict[str, dict[str, Any]] = {}
     for name, variable in dataset.variables.items():
-        if name == "date":
-            encoding["date"] = {"units": "days since 1970-01-01", "dtype": "int32", "calendar": "standard"}
+        if name in {"date", "profile_date"}:
+            encoding[str(name)] = {"units": "days since 1970-01-01", "dtype": "int32", "calendar": "standard"}
         elif variable.dtype.kind == "f":
             encoding[str(name)] = {**_COMPRESSED, "_FillValue": np.nan} if variable.ndim else {"_FillValue": np.nan}
         elif variable.dtype.kind in "iu" and variable.ndim:

@@ -94,7 +94,7 @@ class Results:
             return frame.reindex(columns=list(tables.columns(name)))
         if source == "findings":
             return tables.findings_table(self.findings)
-        return tables.from_dataset(getattr(self, source), name)
+        return tables.from_dataset(tables.last_days(getattr(self, source), name), name)
 
     def blocks(self, name: str, rows: int) -> Iterator[pd.DataFrame]:
         """The table in pieces of whole days, of about `rows` rows each, so that a long one need not fit in memory."""
@@ -102,10 +102,23 @@ class Results:
         if source in {"frame", "findings"} or "date" not in tables.columns(name):
             yield self.table(name)
             return
-        dataset = getattr(self, source)
+        dataset = tables.last_days(getattr(self, source), name)
         step = max(1, rows // max(1, dataset.sizes[tables.DIMENSION[source]]))
         for first in range(0, dataset.sizes["date"], step):
             yield tables.from_dataset(dataset.isel(date=slice(first, first + step)), name)
+
+    @property
+    def air_profiles(self) -> pd.DataFrame:
+        """Morning air of the last days by layer: height, potential temperature, humidity with and without crops.
+
+        Columns date, county_id, height_m, theta_c, humidity_g_kg, humidity_without_g_kg; empty where a run has none.
+        """
+        names = [name for name in self.county.data_vars if str(name).startswith("profile_") and "layer" in
+                 self.county[name].dims]  # fmt: skip
+        found = self.county[names].to_dataframe().reset_index() if names else pd.DataFrame()
+        shown = {str(name): str(name).removeprefix("profile_") for name in names}
+        columns = ["date", "county_id", "height_m", "theta_c", "humidity_g_kg", "humidity_without_g_kg"]
+        return found.rename(columns={"profile_date": "date", **shown}).reindex(columns=columns)
 
     @property
     def dates(self) -> np.ndarray:

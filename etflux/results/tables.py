@@ -16,6 +16,7 @@ import xarray as xr
 from etflux.findings import Finding, ordered
 from etflux.variables import flag_words
 
+HOUR_ROWS = 200_000  # of the table of hours; NetCDF has all days
 DIMENSION: Mapping[str, str] = {"station": "station_id", "stand": "unit_id", "county": "county_id"}
 BIT_KINDS: Mapping[str, str] = {"source": "bit of source", "provisional": "bit of provisional", "air": "bit of flags"}
 
@@ -79,6 +80,8 @@ def from_dataset(dataset: xr.Dataset, name: str) -> pd.DataFrame:
     """Make a tidy table of a dataset: one row per day and id, or per id where the table has no date."""
     if name == "second_opinions":
         return _second_opinions(dataset)
+    if name == "county_hours":
+        return _county_hours(dataset)
     wanted = columns(name)
     dims = [dim for dim in ("date", DIMENSION[source_of(name)], "tag") if dim in wanted and dim in dataset.dims]
     if "tag" in wanted and source_of(name) == "county" and "tag" not in dims:
@@ -123,6 +126,28 @@ def _second_opinions(dataset: xr.Dataset) -> pd.DataFrame:
         pieces.append(pd.DataFrame(piece))
     blank = pd.DataFrame(columns=list(columns("second_opinions")))
     return pd.concat(pieces, ignore_index=True) if pieces else blank
+
+
+def _county_hours(dataset: xr.Dataset) -> pd.DataFrame:
+    """The day's course of every county; hours before the air begins to mix are left out."""
+    wanted = columns("county_hours")
+    if "hour" not in dataset.dims or "hourly_dew_point_mixed_c" not in dataset:
+        return pd.DataFrame(columns=list(wanted))
+    dims = ("date", "county_id", "hour")
+    hourly = {f"hourly_{column}": column for column in wanted if f"hourly_{column}" in dataset}
+    named = dataset[[*hourly, "clock_minus_solar_h"]].rename(hourly)
+    named["clock_h"] = named["hour"] + named["clock_minus_solar_h"]
+    shape = tuple(named.sizes[dim] for dim in dims)
+    there = np.isfinite(_column(named, "dew_point_mixed_c", dims, shape))
+    return pd.DataFrame({column: _column(named, column, dims, shape)[there] for column in wanted})
+
+
+def last_days(dataset: xr.Dataset, name: str) -> xr.Dataset:
+    """The days of a dataset that a table holds: all, but of the day's courses only as many as people can open."""
+    if name != "county_hours" or "hour" not in dataset.dims:
+        return dataset
+    per_day = max(1, dataset.sizes["county_id"] * dataset.sizes["hour"])
+    return dataset.isel(date=slice(-max(1, HOUR_ROWS // per_day), None))
 
 
 def findings_table(findings: Iterable[Finding]) -> pd.DataFrame:

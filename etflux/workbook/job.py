@@ -24,6 +24,7 @@ def run_workbook(
     output: Path | str | None = None,
     on: str | dt.date | None = None,
     progress: Progress | None = None,
+    draws: int | None = None,
 ) -> Results:
     """Read a filled workbook, check it, compute it and write the results folder.
 
@@ -37,6 +38,8 @@ def run_workbook(
         Day of the brief; the setting `brief_date`, else the last day of the record, when not given.
     progress : callable, optional
         Called with the step's name and the share of the work that is done.
+    draws : int, optional
+        Random draws of the air, instead of the setting `air_draws`.
 
     Returns
     -------
@@ -49,6 +52,7 @@ def run_workbook(
     CannotRead, CannotWrite
         If the workbook cannot be read, or the results cannot be written.
     """
+    from etflux.case import with_settings
     from etflux.findings import ProblemsFound, has_errors
     from etflux.results import write_folder
     from etflux.run import run_case
@@ -60,6 +64,8 @@ def run_workbook(
     case, findings = checked(path, progress=lambda step, share: tell("reading and checking", 0.2 * share))
     if case is None or has_errors(findings):
         raise ProblemsFound(findings)
+    if draws is not None:
+        case = replace(case, settings=with_settings(case.settings, air_draws=draws))
     results = run_case(case, findings, lambda step, share: tell(step, 0.2 + 0.4 * share))
     day = brief_day(results, on)
     folder = results_folder(path, output)

@@ -43,6 +43,7 @@ SUBJECTS = {  # what a row of each table is about
     "covers": ("cover", "cover_id"), "stands": ("stand", "stand_id"), "irrigation_events": ("stand", "stand_id"),
     "irrigation_rules": ("rule", "rule_id"), "observations": ("stand", "stand_id"),
     "mixing_depths": ("county", "county_id"), "profiles": ("site", "site_id"), "wind": ("county", "county_id"),
+    "background_air": ("day", "date"),
 }  # fmt: skip
 
 

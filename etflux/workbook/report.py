@@ -1,8 +1,9 @@
 """The results workbook: what a run gives, for people, in the units they chose.
 
-Sheets in the order of a reader's questions: what is it today (brief), where and when (county-days), what does each
-field need (stand-days, growth stages), can the weather be trusted (stations), does it add up (closure), how was it done
-(methods), what exactly was run.
+Sheets in the order of a reader's questions: what is it today (brief); how much did the crops add, from what, when and
+where, at which hour, how sure is it, and what if there were no crops (six sheets of the day); where and when
+(county-days), what does each field need (stand-days, growth stages), can the weather be trusted (stations), does it add
+up (closure), how was it done (methods), what exactly was run.
 """
 
 from __future__ import annotations
@@ -12,7 +13,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 from etflux.variables import System
-from etflux.workbook import report_days, report_tables
+from etflux.workbook import report_air, report_days, report_tables
 from etflux.workbook.report_brief import write_brief
 from etflux.workbook.report_sheet import TableSheet
 from etflux.workbook.report_style import Look, set_page
@@ -24,8 +25,8 @@ if TYPE_CHECKING:
     from etflux.results import Results
 
 SHEETS = (
-    "Brief", "County days", "Stand days", "Growth stages", "Stations", "Station days", "Closure", "Methods",
-    "What was run",
+    "Brief", "Crop moisture", "How sure", "Hour by hour", "Who moistens whom", "Other worlds", "County days",
+    "Stand days", "Growth stages", "Stations", "Station days", "Closure", "Methods", "What was run",
 )  # fmt: skip
 
 
@@ -77,6 +78,12 @@ def _write_sheets(results, book: Workbook, system: System, day) -> None:  # type
     for name in SHEETS[1:]:
         set_page(sheets[name], system, identity_line(results))
     write_brief(results, book, sheets["Brief"], look, system, day)
+    if results.county.sizes["date"]:
+        report_air.crop_moisture(results, sheets["Crop moisture"], look, system, day)
+        report_air.how_sure(results, sheets["How sure"], look, system, day)
+        report_air.hour_by_hour(results, sheets["Hour by hour"], look, system, day)
+        report_air.moistens_whom(results, sheets["Who moistens whom"], look, system, day)
+        report_air.other_worlds(results, sheets["Other worlds"], look, system, day)
     report_days.county_days(results, sheets["County days"], look, system, day)
     report_days.stand_days(results, sheets["Stand days"], look, system, day)
     report_tables.growth_stages(results, sheets["Growth stages"], look)

@@ -18,6 +18,13 @@ CAUTIONS = (
     "Irrigation decisions: check the field first, and follow local water law and licensed advice.",
     "Days with estimated weather, default parameters or forecasts are marked; they may still move.",
 )
+# What the other worlds are, wherever they are shown.
+WORLD_SENTENCES = {
+    "crops": "Rest's cover on every stand: the same days if every stand grew what covers the rest of its county; what "
+    "this world has more is the effect of the crops.",
+    "evaporation": "No evaporation: the same days if no water had left the ground anywhere in the region.",
+}
+BAND_NOTE = "Ranges and bands cover the parameters that were varied, not the error of the method."
 # Flags that leave no number to print.
 BLANKING = ("saturated", "energy_short", "tags_above_humidity")
 NOT_COMPUTED = "the air was not computed"

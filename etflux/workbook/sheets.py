@@ -230,6 +230,7 @@ WORDS: Mapping[tuple[str, str], tuple[str, str]] = {
     ("wind", "wind_speed_m_s"): ("", "Mean of the part of the day. Speed and direction, or the two below."),
     ("wind", "u_m_s"): ("", "Instead of speed and direction."),
     ("wind", "v_m_s"): ("", "Instead of speed and direction."),
+    ("background_air", "background_dew_point_c"): ("", "At the ground, of the air that comes in from outside."),
 }  # fmt: skip
 
 
@@ -303,7 +304,10 @@ _SHEETS: tuple[tuple[str, str, Need, str, int], ...] = (
      "otherwise it is computed.", 22),
     ("profiles", "Profiles", "air", "Morning balloon profiles, one row for each level, from the ground up; without "
      "them a standard profile is taken.", 25),
-    ("wind", "Wind", "air", "Wind in the mixed air by day and night.", 22),
+    ("wind", "Wind", "air", "Wind in the mixed air by day and night: it carries the crops' water from county to "
+     "county.", 22),
+    ("background_air", "Background air", "air", "How humid air is that no crop has moistened, where it is known for a "
+     "day; the other days take the setting.", 12),
     ("soils", "Soils", "ready", "Ready to use. Change a row, or add soils of your own below.", 4),
     ("covers", "Covers", "ready", "Ready to use. Change a row, or add covers of your own below.", 4),
 )  # fmt: skip

@@ -10,7 +10,7 @@ import pandas as pd
 import pytest
 import xarray as xr
 
-from etflux.findings import CannotRead, CannotWrite
+from etflux.findings import CannotRead, CannotWrite, Finding
 from etflux.results import default_folder, files, folder_state, read_folder, read_tables, table_names, write_folder
 
 
@@ -104,6 +104,17 @@ def test_reading_back_gives_the_same_results(small, whole):
     assert [finding.record() for finding in again.findings] == [finding.record() for finding in small.findings]
     assert (again.run_id, again.issued, again.version) == (small.run_id, small.issued, small.version)
     assert dict(again.settings) == dict(small.settings)
+
+
+def test_a_finding_without_a_row_is_read_back(small, tmp_path):
+    """A finding made during the run names a stand and no row; one about a file names neither."""
+    found = [
+        Finding("check-roots", "stands", subject="stand S1"),
+        Finding("value-repeated", "weather", 8, "t_min_c", 14.2),
+    ]
+    folder = write_folder(dataclasses.replace(small, findings=found), tmp_path / "run")
+    again = read_folder(folder).findings
+    assert sorted(finding.row is None for finding in again) == [False, True]
 
 
 def test_ids_keep_their_zeros_and_blanks_stay_blank(make, tmp_path):

@@ -25,7 +25,10 @@ LISTED = {
     "depth_without_crops_m theta_without_crops_c effect_of_evaporation_c dew_point_without_evaporation_c "
     "depth_without_evaporation_m "
     "theta_without_evaporation_c rise_observed_c rise_mixing_c rise_same_day_c rise_near_ground_c rise_other_c "
-    "estimate_error_c estimate_bias_c",
+    "estimate_error_c estimate_bias_c wind_east_m_s wind_north_m_s clock_minus_solar_h contribution_p10_c "
+    "contribution_p50_c contribution_p90_c",
+    "county_hours": "date county_id hour clock_h mixing_depth_m theta_mixed_c dew_point_mixed_c rh_mixed_pct "
+    "humidity_mixed_g_kg contribution_c contribution_g_kg",
     "county_tags": "date county_id tag le_by_tag_w_m2",
     "stand_daily": "date unit_id stand_id part kind county_id cover_id eto_mm stage_code days_after_planting kcb ke ks "
     "kc plant_height_m root_depth_m ground_cover few evaporation_mm transpiration_mm et_mm et_potential_mm de_mm dr_mm "
