@@ -454,6 +454,7 @@ def results(
         names=_names(case),
         methods=pd.DataFrame(METHODS, columns=["step", "method", "source"]),
         findings=findings,
+        outlines=case.outlines,
         settings=case.settings,
         source=dict(case.source),
     )

@@ -7,10 +7,14 @@ outline areas wherever they are shown.
 
 from __future__ import annotations
 
+import csv
+import gzip
 import json
 import math
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
+from functools import cache
+from importlib.resources import files
 from pathlib import Path
 from typing import Any
 
@@ -169,12 +173,69 @@ def _ring_moments(ring: np.ndarray) -> tuple[float, float, float]:
     return km2, km2 * cx, km2 * cy
 
 
+@dataclass(frozen=True)
+class Alias:
+    """A GEOID that the packaged outlines do not have: which outline it lies in, whether it is all of it, and why."""
+
+    outline_geoid: str
+    whole: bool
+    change: str
+
+
+@cache
+def us_counties() -> Mapping[str, Outline]:
+    """Counties of the United States by GEOID: Census Bureau cartographic boundaries, 2017 edition, 1:5,000,000.
+
+    Names end in the state's, since many counties share one. Neighbours share the vertices of their border.
+    """
+    text = gzip.decompress(files("etflux.tables").joinpath("us_counties.topojson.gz").read_bytes())
+    states = {row["state_fips"]: row["name"] for row in _packaged_rows("us_states.csv")}
+    return {
+        geoid: Outline(geoid, f"{outline.name}, {states[geoid[:2]]}", outline.polygons)
+        for geoid, outline in from_topojson(json.loads(text), "counties").items()
+    }
+
+
+@cache
+def us_county_aliases() -> Mapping[str, Alias]:
+    """GEOIDs that came or went before or after the edition of :func:`us_counties`."""
+    return {
+        row["geoid"]: Alias(row["outline_geoid"], row["whole"] == "yes", row["change"])
+        for row in _packaged_rows("us_county_aliases.csv")
+    }
+
+
+def _packaged_rows(name: str) -> list[dict[str, str]]:
+    text = files("etflux.tables").joinpath(name).read_text(encoding="utf-8")
+    return list(csv.DictReader(text.splitlines()))
+
+
+def to_geojson(outlines: Mapping[str, Outline]) -> dict[str, Any]:
+    """A GeoJSON feature collection, longitude and latitude to a tenth of a metre or so."""
+    return {
+        "type": "FeatureCollection",
+        "features": [
+            {
+                "type": "Feature",
+                "id": county_id,
+                "properties": {"county_id": county_id, "name": outline.name},
+                "geometry": {
+                    "type": "MultiPolygon",
+                    "coordinates": [[ring.round(6).tolist() for ring in polygon] for polygon in outline.polygons],
+                },
+            }
+            for county_id, outline in outlines.items()
+        ],
+    }
+
+
 def area_and_centroid(outline: Outline) -> tuple[float, float, float]:
     """Outline area on the sphere and its centroid.
 
     Returns
     -------
     area_km2, latitude_deg, longitude_deg : float
+        Of an outline without any area, the middle of its vertices.
 
     Examples
     --------
@@ -186,12 +247,20 @@ def area_and_centroid(outline: Outline) -> tuple[float, float, float]:
     (12363.7, 0.5, 0.5)
     """
     total = mx = my = 0.0
+    east = np.concatenate([ring[:, 0] for polygon in outline.polygons for ring in polygon])
+    over_the_date_line = east.max() - east.min() > 180.0
     for polygon in outline.polygons:
         for position, ring in enumerate(polygon):
+            if over_the_date_line:
+                ring = np.column_stack([ring[:, 0] % 360.0, ring[:, 1]])
             km2, x, y = _ring_moments(ring)
             sign = math.copysign(1.0, km2) * (1.0 if position == 0 else -1.0)
             total, mx, my = total + sign * km2, mx + sign * x, my + sign * y
-    return float(total), math.degrees(math.asin(my / total)), math.degrees(mx / total)
+    if total == 0.0:
+        north = np.concatenate([ring[:, 1] for polygon in outline.polygons for ring in polygon])
+        return 0.0, float(north.mean()), float(east.mean())
+    longitude = (math.degrees(mx / total) + 180.0) % 360.0 - 180.0
+    return float(total), math.degrees(math.asin(my / total)), longitude
 
 
 def shared_borders(outlines: Mapping[str, Outline]) -> list[Border]:

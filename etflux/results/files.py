@@ -20,6 +20,7 @@ from typing import TYPE_CHECKING, Any, NamedTuple
 import numpy as np
 import pandas as pd
 
+from etflux import outlines
 from etflux.findings import CannotRead, CannotWrite
 from etflux.results import tables
 from etflux.results.netcdf import read_netcdf, write_netcdf
@@ -32,6 +33,7 @@ if TYPE_CHECKING:
 MANIFEST = "run.json"
 NETCDF = "results.nc"
 WORKBOOK = "results.xlsx"
+OUTLINES = "counties.geojson"
 _WRITING = ".etflux-writing-"
 _STALE_SECONDS = 86400.0
 
@@ -97,6 +99,8 @@ def write_folder(
     tell = progress or (lambda step, share: None)
     writers: dict[str, Writer] = dict(_table_writers(results))
     writers[NETCDF] = write_netcdf
+    if results.outlines:
+        writers[OUTLINES] = _write_outlines
     # The workbook is the file most likely to be open elsewhere: it moves first, so that a refusal leaves all as it was.
     moving = {**({WORKBOOK: workbook_writer} if workbook_writer else {}), **(others or {}), **writers}
     try:
@@ -155,6 +159,7 @@ def read_folder(folder: Path | str) -> Results:
         **read_netcdf(folder / NETCDF),
         **frames,
         findings=tables.findings_of(_read_table(folder, "findings")),
+        outlines=outlines.read(folder / OUTLINES) if OUTLINES in manifest["files"] else {},
         settings=manifest["settings"],
         source=manifest["input"],
         run_id=manifest["run_id"],
@@ -192,6 +197,11 @@ def _has_pyarrow() -> bool:
     from importlib.util import find_spec
 
     return find_spec("pyarrow") is not None
+
+
+def _write_outlines(results: Results, path: Path) -> None:
+    text = json.dumps(outlines.to_geojson(results.outlines), ensure_ascii=False, separators=(",", ":"))
+    path.write_text(text + "\n", encoding="utf-8")
 
 
 def _write_table(results: Results, name: str, path: Path) -> None:

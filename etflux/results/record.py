@@ -16,6 +16,7 @@ import xarray as xr
 from etflux import __version__
 from etflux.case import settings_record
 from etflux.findings import Finding
+from etflux.outlines import Outline
 from etflux.results import tables
 
 
@@ -38,6 +39,8 @@ class Results:
         Columns of ``tables/result_columns.toml``. `term` of a budget is a name of the registry, or words.
     findings : sequence of Finding
         What the checks said.
+    outlines : mapping of str to Outline
+        Of the counties that have one.
     settings : mapping or Settings
         The choices of method; kept as a mapping.
     source : mapping
@@ -63,6 +66,7 @@ class Results:
     names: pd.DataFrame = _empty("names")
     methods: pd.DataFrame = _empty("methods")
     findings: Sequence[Finding] = ()
+    outlines: Mapping[str, Outline] = field(default_factory=dict)
     settings: Any = field(default_factory=dict)
     source: Mapping[str, Any] = field(default_factory=dict)
     run_id: str = ""

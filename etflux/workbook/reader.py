@@ -14,6 +14,7 @@ import numpy as np
 from etflux.case import Case, Settings
 from etflux.findings import Finding
 from etflux.workbook.cells import Book, Limits, open_book
+from etflux.workbook.county_outlines import with_outlines
 from etflux.workbook.headings import nearest, plain
 from etflux.workbook.places import Places
 from etflux.workbook.rows import Block, frame, read_sheet
@@ -102,8 +103,11 @@ def read(
     findings += _missing(blocks, places)
     tables, said = _tables(blocks, places)
     findings += said
+    unread = {(found.row, found.quantity) for found in findings if found.table == "counties" and found.row is not None}
+    tables["counties"], drawn, said = with_outlines(settings, tables["counties"], path.parent, unread)
+    findings += [places.placed(finding) for finding in said]
     source = {"path": str(path), "sha256": sha256(path), "template_version": version, "weather_files": files}
-    return Case(settings, tables, source), findings, places
+    return Case(settings, tables, source, drawn), findings, places
 
 
 def _tell(tell: Progress, share: float, step: str) -> None:

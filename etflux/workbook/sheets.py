@@ -43,6 +43,7 @@ DATE_SETTINGS = ("season_start", "season_end", "brief_date")
 MAY_BE_BLANK = {
     ("weather", "t_max_c"), ("weather", "t_min_c"), ("rest", "county_id"), ("mixing_depths", "county_id"),
     ("wind", "county_id"), ("rain_gauges", "rain_mm"), ("rest", "treatment"),
+    *(("counties", name) for name in ("area_km2", "latitude_deg", "longitude_deg")),  # of a US county: from its GEOID
 }  # fmt: skip
 
 
@@ -149,9 +150,11 @@ WORDS: Mapping[tuple[str, str], tuple[str, str]] = {
     ("weather", "dew_point_afternoon_c"): ("", "Nearest 15:00; to compare with."),
     ("rain_gauges", "county_id"): ("", "As in the Counties sheet."),
     ("rain_gauges", "rain_mm"): ("", "Goes before the station's rain. Blank is missing; write 0 for a dry day."),
-    ("counties", "area_km2"): ("", "Of the whole county, land and water."),
-    ("counties", "latitude_deg"): ("", "Of the middle; degrees north, decimal."),
-    ("counties", "longitude_deg"): ("", "Of the middle; degrees east, west is negative."),
+    ("counties", "county_id"): ("", "In the United States the GEOID, five digits: name, middle and area may then be "
+                                    "blank and are filled in."),
+    ("counties", "area_km2"): ("", "Of the whole county, land and water. US county: may be blank."),
+    ("counties", "latitude_deg"): ("", "Of the middle; degrees north, decimal. US county: may be blank."),
+    ("counties", "longitude_deg"): ("", "Of the middle; degrees east, west is negative. US county: may be blank."),
     ("counties", "elevation_m"): ("", "Mean above sea level. Blank: its station's."),
     ("counties", "station_id"): ("Weather station", "Blank: the nearest."),
     ("rest", "county_id"): ("", "Blank: every county without rows of its own."),
