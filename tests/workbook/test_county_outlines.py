@@ -177,7 +177,7 @@ def test_blank_place_of_a_county_without_geoid_is_an_error_at_its_cell(workbook,
 
 
 def test_packaged_outlines_cover_the_country():
-    """Outlines end at the shore: land of the states, 9.147, and inland water, 0.222 million km2 (Census 2010, memory)."""
+    """Outlines end at the shore: land of the 9.147, and inland water, 0.222 million km2 (Census 2010, from memory)."""
     counties = outlines.us_counties()
     assert len(counties) == 3231
     area = {geoid: outlines.area_and_centroid(outline) for geoid, outline in counties.items()}
