@@ -40,6 +40,7 @@ _STALE_SECONDS = 86400.0
 # Ten decimals: the two thousand or so depths that enter a year's water balance of one stand then miss closure by
 # 1e-7 mm at the very worst. Seventeen digits would be exact, as results.nc is, for twice the size.
 DECIMALS = 10
+HOUR_DECIMALS = 4  # the day's courses enter no balance
 BLOCK_ROWS = 20_000  # made into text at once
 PARQUET_ROWS = 1_000_000
 
@@ -206,21 +207,22 @@ def _write_outlines(results: Results, path: Path) -> None:
 
 def _write_table(results: Results, name: str, path: Path) -> None:
     exact = tables.source_of(name) == "frame"  # short tables; the budgets among them must close to 1e-9
+    decimals = None if exact else HOUR_DECIMALS if name == "county_hours" else DECIMALS
     with path.open("w", encoding="utf-8", newline="") as out:
         out.write(",".join(tables.columns(name)) + "\n")
         for block in results.blocks(name, BLOCK_ROWS):
-            texts = [_written(block[column], exact) for column in block.columns]
+            texts = [_written(block[column], decimals) for column in block.columns]
             out.writelines(line + "\n" for line in map(",".join, zip(*texts, strict=True)))
 
 
-def _written(values: pd.Series, exact: bool) -> list[str]:
+def _written(values: pd.Series, decimals: int | None) -> list[str]:
     """A column as it goes to a file, half the time of the library's own writer; a missing value is blank."""
     name = str(values.name)
     if tables.column_kind(name) == "date":
         days = pd.to_datetime(values).to_numpy().astype("datetime64[D]")
         return np.where(np.isnat(days), "", np.datetime_as_string(days)).tolist()
     if values.dtype.kind == "f":
-        numbers = values.to_numpy() if exact else values.to_numpy().round(DECIMALS) + 0.0  # no minus zero
+        numbers = values.to_numpy() if decimals is None else values.to_numpy().round(decimals) + 0.0  # no minus zero
         return ["" if number != number else repr(number) for number in numbers.tolist()]
     if values.dtype.kind in "iu":
         return ["" if number is pd.NA else str(number) for number in values.tolist()]

@@ -26,7 +26,8 @@ WATER_OUT = ("runoff_mm", "drainage_mm", "evaporation_mm", "transpiration_mm")
 COUNTY_MEANS = (
     "eto_mm", "rain_mm", "et_stands_mm", "et_county_mm", "le_stands_w_m2", "le_county_w_m2", "le_daytime_w_m2",
     "represented_pct", "mixing_depth_m", "dew_point_mixed_c", "dew_point_without_c", "contribution_c",
-    "contribution_g_kg", "contribution_same_day_c", "contribution_carried_c",
+    "contribution_g_kg", "contribution_same_day_c", "contribution_carried_c", "contribution_p10_c",
+    "contribution_p90_c", "effect_of_crops_c",
 )  # fmt: skip
 
 

@@ -181,6 +181,16 @@ def _air_sentences(results: Results, numbers: dict[str, Any], system: System) ->
     if len(covers) > 1:
         largest = max(covers, key=lambda row: row["contribution_c"])
         sentences.append(f"Most of it came from {largest['tag']} ({rise(largest['contribution_c'])}).")
+    if np.isfinite(numbers["effect_of_crops_c"]):
+        sentences.append(
+            f"Had every stand grown what covers the rest of its county, the afternoon dew point would be "
+            f"{rise(abs(numbers['effect_of_crops_c']))} {'lower' if numbers['effect_of_crops_c'] >= 0.0 else 'higher'}."
+        )
+    if np.isfinite(numbers["contribution_p10_c"]):
+        sentences.append(
+            f"Of {results.settings['air_draws']} random draws eight in ten lie between "
+            f"{rise(numbers['contribution_p10_c'])} and {rise(numbers['contribution_p90_c'])}. {BAND_NOTE}"
+        )
     sure = numbers["marked"]["confidence"]
     parts = [f"{count} {word}" for word, count in sure.items() if count and word != "no remark"]
     if parts:
