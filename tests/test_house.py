@@ -18,7 +18,7 @@ PACKAGE = Path(etflux.__file__).parent
 ROOMS = [
     "__init__", "variables", "findings", "humidity", "solar", "reference", "case", "outlines", "weather",
     "irrigation", "soilwater", "stands", "marks", "crops", "canopy", "counties",
-    "column", "profiles", "wind", "cells", "airmass", "air_checks", "checks", "methods", "results", "assemble",
+    "column", "profiles", "igra", "wind", "cells", "airmass", "air_checks", "checks", "methods", "results", "assemble",
     "run", "workbook", "brief", "cli",
 ]  # fmt: skip
 

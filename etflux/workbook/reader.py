@@ -13,6 +13,7 @@ import numpy as np
 
 from etflux.case import Case, Settings
 from etflux.findings import Finding
+from etflux.workbook import profile_files
 from etflux.workbook.cells import Book, Limits, open_book
 from etflux.workbook.county_outlines import with_outlines
 from etflux.workbook.headings import nearest, plain
@@ -99,6 +100,8 @@ def read(
             blocks[sheet.table] = [read_sheet(book, titles[sheet.table], sheet, system, told)]
     files, said = _weather_files(blocks, path.parent, system, places)
     findings += said
+    balloons, said = _profile_files(settings, blocks, path.parent, limits, places)
+    findings += said
     tell("reading done", 1.0)
     findings += _missing(blocks, places)
     tables, said = _tables(blocks, places)
@@ -107,6 +110,7 @@ def read(
     tables["counties"], drawn, said = with_outlines(settings, tables["counties"], path.parent, unread)
     findings += [places.placed(finding) for finding in said]
     source = {"path": str(path), "sha256": sha256(path), "template_version": version, "weather_files": files}
+    source["profile_files"] = balloons
     return Case(settings, tables, source, drawn), findings, places
 
 
@@ -175,6 +179,29 @@ def _weather_files(
             places.files |= dict.fromkeys(ids, name)
             hashes[name] = sha256(path)
     return hashes, []
+
+
+def _profile_files(
+    settings: Settings, blocks: dict[str, list[Block]], folder: Path, limits: Limits | None, places: Places
+) -> tuple[dict[str, str], list[Finding]]:
+    """Read every file of soundings that the settings name, for the days of the weather; hash of each."""
+    cells = [cell for block in blocks.get("weather", []) for cell in block.columns.get("date", []) if cell is not None]
+    if not settings.profile_files or not cells:
+        return {}, []
+    days = np.array(cells, dtype="datetime64[D]")
+    first = max(days.min(), np.datetime64(settings.season_start or days.min(), "D"))
+    last = min(days.max(), np.datetime64(settings.season_end or days.max(), "D"))
+    hashes: dict[str, str] = {}
+    said = []
+    for name in profile_files.names(settings.profile_files):
+        path = beside(folder, name)
+        if isinstance(path, Trouble):
+            where = places.of("settings", None, "profile_files")
+            said.append(Finding(path.code, "settings", None, "profile_files", name, "", path.detail, where))
+            continue
+        blocks.setdefault("profiles", []).append(profile_files.read_file(path, name, first, last, limits))
+        hashes[name] = sha256(path)
+    return hashes, said
 
 
 def _missing(blocks: dict[str, list[Block]], places: Places) -> list[Finding]:
