@@ -87,6 +87,49 @@ def run(
         print(summary_text(results, on=on, folder=results_folder(file, output)))
 
 
+@app.command()
+def draw(
+    results: Annotated[Path, typer.Argument(help="Folder of results that etflux run wrote.")],
+    show: Annotated[str | None, typer.Option("--show", help="What to show; --list prints the names.")] = None,
+    on: Annotated[str | None, typer.Option("--on", help="Day, as 2031-07-26; else the day of the brief.")] = None,
+    until: Annotated[str | None, typer.Option("--until", help="Last day, for a sum or mean of days.")] = None,
+    county: Annotated[str | None, typer.Option("--county", help="Id of a county.")] = None,
+    stand: Annotated[str | None, typer.Option("--stand", help="Id of a stand, for its season.")] = None,
+    cover: Annotated[str | None, typer.Option("--cover", help="One cover alone, as corn.")] = None,
+    units: Annotated[Literal["si", "us"] | None, typer.Option(help="Units; the run's own if not given.")] = None,
+    size: Annotated[Literal["slide", "page"], typer.Option(help="For a screen, or for an upright page.")] = "slide",
+    output: Annotated[Path | None, typer.Option("-o", "--output", help="File to write, .svg or .png.")] = None,
+    names: Annotated[bool, typer.Option("--list", help="Print what can be shown and leave.")] = False,
+) -> None:
+    """Draw a map or a figure of results, as SVG or PNG."""
+    from etflux.brief.figures import draw_file, names_text
+
+    if names or show is None:
+        print(names_text())
+        raise typer.Exit(GOOD if names else USAGE)
+    look: dict[str, Any] = {"county": county, "stand": stand, "cover": cover, "units": units, "size": size}
+    print(f"Drew {draw_file(results, show, on, until=until, output=output, **look)}")
+
+
+@app.command()
+def compare(
+    results: Annotated[Path, typer.Argument(help="Folder that a run has written.")],
+    measurements: Annotated[
+        Path, typer.Argument(help="CSV with place, date, quantity, value, unit; optional uncertainty, series.")
+    ],
+    output: Annotated[Path | None, typer.Option("-o", "--output", help="Folder for the comparison.")] = None,
+) -> None:
+    """Hold a run against measurements: agreement by month, growth stage and season, tables and figures."""
+    from etflux.compare import compare as compare_run
+    from etflux.compare import read_measurements, summary_text, write_comparison
+    from etflux.results import read_folder
+
+    run_results = read_folder(results)
+    found = compare_run(run_results, read_measurements(measurements))
+    folder = write_comparison(run_results, found, output or results / "comparison")
+    print(summary_text(found, folder))
+
+
 class _progress:  # noqa: N801 - reads as a statement: with _progress(quiet) as progress
     """Show how far the work is on standard error; on a terminal as one moving line, else nothing."""
 
