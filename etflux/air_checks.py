@@ -5,6 +5,7 @@ Each fault is one finding at the cell that has it; faults that leave a number us
 
 from __future__ import annotations
 
+import importlib.util
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -41,12 +42,19 @@ def check(case: Case) -> list[Finding]:
         By table, then by row.
     """
     return [
+        *_extras(case.settings),
         *_profiles(case.table("profiles")),
         *_mixing_depths(case.table("mixing_depths"), case.settings),
         *_wind(case.table("wind")),
         *_at("background_air", case.table("background_air"), "row-repeated", "date",
              _repeated(case.table("background_air"), ["date"]), "background air"),
     ]  # fmt: skip
+
+
+def _extras(settings: Settings) -> list[Finding]:
+    if settings.air_cape and importlib.util.find_spec("metpy") is None:
+        return [Finding("cape-not-installed", "settings", None, "air_cape", "yes")]
+    return []
 
 
 def _column(rows: pd.DataFrame, name: str) -> np.ndarray:

@@ -26,6 +26,10 @@ class CannotRead(EtfluxError):
     """An input file is missing, locked, encrypted, damaged, too large, or not what its name says."""
 
 
+class NotInstalled(EtfluxError):
+    """What was asked for needs an extra of the package that is not installed."""
+
+
 class CannotWrite(EtfluxError):
     """A result cannot be written where it was asked for."""
 

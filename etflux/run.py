@@ -9,7 +9,7 @@ from __future__ import annotations
 from collections.abc import Callable, Sequence
 from typing import TYPE_CHECKING
 
-from etflux import airmass, assemble, checks, stands, weather
+from etflux import airmass, assemble, checks, convection, stands, weather
 from etflux.findings import Finding, ProblemsFound, has_errors
 
 if TYPE_CHECKING:
@@ -63,6 +63,9 @@ def run_case(case: Case, findings: Sequence[Finding] | None = None, progress: Pr
     tell("air above the counties", 0.65)
     given = assemble.air_inputs(case, record, local, county, water, moved)
     air = airmass.season(given, case.settings, lambda share: tell("air above the counties", 0.65 + 0.3 * share))
+    if case.settings.air_cape:
+        tell("convective energy", 0.93)
+        air = convection.with_energy(given, air, case.settings)
 
     tell("results", 0.95)
     county = assemble.with_air(county, air)

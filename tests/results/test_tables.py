@@ -26,7 +26,9 @@ LISTED = {
     "depth_without_evaporation_m "
     "theta_without_evaporation_c rise_observed_c rise_mixing_c rise_same_day_c rise_near_ground_c rise_other_c "
     "estimate_error_c estimate_bias_c wind_east_m_s wind_north_m_s clock_minus_solar_h contribution_p10_c "
-    "contribution_p50_c contribution_p90_c",
+    "contribution_p50_c contribution_p90_c cape_mixed_j_kg cin_mixed_j_kg cape_most_j_kg "
+    "cin_most_j_kg cape_mixed_without_crops_j_kg cin_mixed_without_crops_j_kg "
+    "cape_most_without_crops_j_kg cin_most_without_crops_j_kg",
     "county_hours": "date county_id hour clock_h mixing_depth_m theta_mixed_c dew_point_mixed_c rh_mixed_pct "
     "humidity_mixed_g_kg contribution_c contribution_g_kg",
     "county_tags": "date county_id tag le_by_tag_w_m2",
