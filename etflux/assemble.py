@@ -15,7 +15,7 @@ from etflux.airmass import AirInputs, AirResults
 from etflux.crops import Stage
 from etflux.findings import Finding
 from etflux.methods import METHODS
-from etflux.results import Results, water_budget
+from etflux.results import Results, confidence, water_budget
 from etflux.variables import flag_bits
 from etflux.weather.record import SOURCE
 
@@ -385,6 +385,9 @@ def with_air(county: xr.Dataset, air: AirResults) -> xr.Dataset:
     """County dataset with the air's variables and the course by the hour."""
     dims = ("date", "county_id")
     found = county.drop_vars("ground_cover").assign({name: (dims, values) for name, values in air.county.items()})
+    if air.county:
+        code = confidence(*(found[name] for name in ("flags", "provisional", "contribution_c", "profile_distance_km")))
+        found["confidence_code"] = (dims, code)
     found = found.assign_coords(hour=air.hours)
     found = found.assign({f"hourly_{name}": ((*dims, "hour"), values) for name, values in air.hourly.items()})
     if air.profiles is None:

@@ -15,7 +15,7 @@ import xarray as xr
 import etflux
 from etflux import assemble, counties, humidity, workbook
 from etflux.case import Case, with_settings
-from etflux.results.summary import CONFIDENCE
+from etflux.results.summary import CONFIDENCE, confidence
 from etflux.run import run_case
 from etflux.workbook.job import moved_days, run_workbook
 from etflux.workbook.report_words import WORLD_SENTENCES
@@ -363,3 +363,10 @@ def without_extras(case: Case) -> Case:
         case.settings, air_worlds=False, air_ranges=False, season_start="2031-06-01", season_end="2031-07-31"
     )
     return Case(settings, case.tables, case.source)
+
+
+def test_confidence_in_the_table_is_that_of_its_own_columns(written):
+    daily = pd.read_csv(written[0] / "county_daily.csv")
+    again = confidence(daily["flags"], daily["provisional"], daily["contribution_c"], daily["profile_distance_km"])
+    assert (again == daily["confidence_code"]).all()
+    assert set(daily["confidence_code"]) >= {0, 1, 2, 3}

@@ -1,4 +1,4 @@
-"""The forecaster's flags of a county and day, what leaves a blank, and a word of confidence."""
+"""The forecaster's flags of a county and day, and what leaves a blank."""
 
 from __future__ import annotations
 
@@ -25,16 +25,8 @@ TEMPERATURE_OFF_K = 2.0
 GIVEN_RATIO = (0.5, 2.0)
 TINY_DEPTH_M = 50.0
 EDGE_CROSSING_H = 24.0
-FAR_PROFILE_KM = 150.0
 
-# Worst first; a county's word is that of the worst it has.
 BLANKS = ("saturated", "energy_short", "tags_above_humidity", "depth_tiny")
-LOW = ("represented_low", "depths_differ", "given_depth_ratio", "cumulus", "heat_elsewhere", "temperature_off")
-FAIR = (
-    "standard_profile", "estimated_dew_point", "forecast", "replaced", "heavy_rain", "moist_above", "depth_floor",
-    "unstable_morning", "extended_profile", "edge_dependent", "dry_region",
-)  # fmt: skip
-CONFIDENCE_WORDS = ("none", "low", "fair", "good")
 
 
 def flags_of(
@@ -79,17 +71,3 @@ def _bits(names: tuple[str, ...]) -> int:
 def blank_rows(flags: np.ndarray) -> np.ndarray:
     """Whether the flags leave no number for the contribution."""
     return (flags & _bits(BLANKS)) > 0
-
-
-def confidence(found: dict[str, np.ndarray]) -> np.ndarray:
-    """Word of confidence as its place in CONFIDENCE_WORDS.
-
-    None without a number; low where a flag of LOW is set; fair where one of FAIR is, or the nearest profile is over
-    150 km away; else good.
-    """
-    flags = found["flags"]
-    code = np.full(flags.shape, 3)
-    far = found["profile_distance_km"] > FAR_PROFILE_KM
-    code = np.where((flags & _bits(FAIR) > 0) | far, 2, code)
-    code = np.where(flags & _bits(LOW) > 0, 1, code)
-    return np.where(blank_rows(flags) | np.isnan(found["contribution_c"]), 0, code)

@@ -10,7 +10,7 @@ import numpy as np
 from etflux import column, humidity
 from etflux.airmass import ranges, rise, worlds
 from etflux.airmass.depths import depths_differ
-from etflux.airmass.flags import AIR, blank_rows, confidence, flags_of
+from etflux.airmass.flags import AIR, blank_rows, flags_of
 from etflux.airmass.inputs import AGES, AirInputs, AirResults
 from etflux.airmass.ledger import budget_rows
 from etflux.airmass.march import Course, March
@@ -129,7 +129,6 @@ def _one_day(inputs: AirInputs, settings: Settings, layout: Layout, course: Cour
     for name, values in found.items():
         if name.startswith(("contribution_", "tag_", "origins_")) or name == "dew_point_without_c":
             found[name] = np.where(blank.reshape(-1, *(1,) * (values.ndim - 1)), np.nan, values)
-    found["confidence_code"] = confidence(found)
     return found | {f"hourly_{name}": values[:, 1:-1] for name, values in by_hour.items() if name[0] != "_"}
 
 

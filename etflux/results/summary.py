@@ -16,9 +16,12 @@ from etflux.variables import flag_bits
 if TYPE_CHECKING:
     from etflux.results.record import Results
 
-# How far a county's contribution can be relied on, from least to most: the order of the brief.
-CONFIDENCE: Mapping[int, str] = {0: "no value", 1: "a range only", 2: "with care", 3: "no remark"}
+# How far a county's contribution can be relied on, from least to most: the order of the brief. A county has the worst
+# word that a flag, a far profile or a day that may still move gives it.
+CONFIDENCE: Mapping[int, str] = {0: "no value", 1: "a range only", 2: "low", 3: "fair", 4: "good"}
 _A_RANGE = ("represented_low", "depths_differ")
+_LOW = ("given_depth_ratio", "cumulus", "heat_elsewhere", "temperature_off")
+FAR_PROFILE_KM = 150.0
 DEFAULT_HOUR = 15.0
 
 WATER_IN = ("rain_stand_mm", "irrigation_mm", "capillary_rise_mm")
@@ -31,7 +34,9 @@ COUNTY_MEANS = (
 )  # fmt: skip
 
 
-def confidence(flags: ArrayLike, provisional: ArrayLike, value: ArrayLike) -> np.ndarray:
+def confidence(
+    flags: ArrayLike, provisional: ArrayLike, value: ArrayLike, profile_distance_km: ArrayLike = np.nan
+) -> np.ndarray:
     """How far a contribution can be relied on.
 
     Parameters
@@ -40,21 +45,27 @@ def confidence(flags: ArrayLike, provisional: ArrayLike, value: ArrayLike) -> np
         Bits of the registry.
     value : array_like
         The contribution; NaN where there is none.
+    profile_distance_km : array_like
+        To the nearest balloon; NaN where none was used. [km]
 
     Returns
     -------
     ndarray of int
-        Keys of :data:`CONFIDENCE`.
+        Keys of :data:`CONFIDENCE`: 1 where too little of the county is represented or the depth hangs on entrainment; 2
+        where the given depth does not fit the heat, clouds vent, much heat comes from elsewhere or the computed
+        temperature is off; 3 with any other flag (a standard profile, an estimated dew point, a forecast ...), a
+        provisional day or a balloon farther than 150 km; else 4. Rules of this project.
 
     Examples
     --------
-    >>> confidence([0, 64, 1024, 0], [0, 0, 0, 0], [2.0, 2.0, 2.0, np.nan])
-    array([3, 2, 1, 0])
+    >>> confidence([0, 64, 1, 1024, 0], [0, 0, 0, 0, 0], [2.0, 2.0, 2.0, 2.0, np.nan])
+    array([4, 3, 2, 1, 0])
     """
     flags, provisional = np.asarray(flags, int), np.asarray(provisional, int)
-    a_range = sum(flag_bits("air")[name] for name in _A_RANGE)
-    remark = (flags != 0) | (provisional != 0)
-    return np.select([np.isnan(np.asarray(value, float)), flags & a_range != 0, remark], [0, 1, 2], 3)
+    a_range, low = (sum(flag_bits("air")[name] for name in names) for names in (_A_RANGE, _LOW))
+    remark = (flags != 0) | (provisional != 0) | (np.asarray(profile_distance_km, float) > FAR_PROFILE_KM)
+    none = np.isnan(np.asarray(value, float))
+    return np.select([none, flags & a_range != 0, flags & low != 0, remark], [0, 1, 2, 3], 4)
 
 
 def values(dataset: xr.Dataset, name: str, day: np.datetime64 | None = None) -> np.ndarray:
@@ -95,7 +106,8 @@ def summarise(results: Results, day: np.datetime64) -> dict[str, Any]:
     is_stand = stand["kind"].to_numpy() == "stand"
     means = {name: area_mean(values(county, name, day), area) for name in COUNTY_MEANS}
     flags, provisional = values(county, "flags", day), values(county, "provisional", day)
-    rank = confidence(flags, provisional, values(county, "contribution_c", day))
+    distance = values(county, "profile_distance_km", day)
+    rank = confidence(flags, provisional, values(county, "contribution_c", day), distance)
     counts = dict.fromkeys(("error", "warning", "note"), 0)
     for finding in results.findings:
         counts[finding.severity] += 1

@@ -175,7 +175,7 @@ def how_sure(results: Results, sheet: TableSheet, look: Look, system: System, da
     """Confidence, what was varied one by one and all at random, the observed rise, remarks; least certain first."""
     county = results.county.sel(date=day)
     flags, base = values(county, "flags"), values(county, "contribution_c")
-    rank = confidence(flags, values(county, "provisional"), base)
+    rank = confidence(flags, values(county, "provisional"), base, values(county, "profile_distance_km"))
     order = np.lexsort((-np.nan_to_num(base), rank))
     row = _head(
         sheet, look, "How sure",

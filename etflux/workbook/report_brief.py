@@ -139,7 +139,7 @@ def _county_table(
     today = results.county.sel(date=day)
     flags, provisional, share = (values(today, name) for name in ("flags", "provisional", "estimated_share_pct"))
     contribution = values(today, "contribution_c")
-    rank = confidence(flags, provisional, contribution)
+    rank = confidence(flags, provisional, contribution, values(today, "profile_distance_km"))
     order = np.lexsort((-np.nan_to_num(contribution, nan=-np.inf), rank))
     listed = order[:MOST_COUNTIES]
     letters, legend = remark_letters(flags[listed], provisional[listed])

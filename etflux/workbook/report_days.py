@@ -186,7 +186,7 @@ def county_columns(results: Results, county: xr.Dataset, system: System) -> tupl
     ids = _spread(county, "county_id", n_days)
     flags, provisional = _by_id(county, "flags"), _by_id(county, "provisional")
     contribution, share = _by_id(county, "contribution_c"), _by_id(county, "estimated_share_pct")
-    rank = confidence(flags, provisional, contribution)
+    rank = confidence(flags, provisional, contribution, _by_id(county, "profile_distance_km"))
     columns = [
         dates("Date", np.tile(county["date"].to_numpy(), county.sizes["county_id"])),
         words("County", ids, width=9),

@@ -192,7 +192,7 @@ def _air_sentences(results: Results, numbers: dict[str, Any], system: System) ->
             f"{rise(numbers['contribution_p10_c'])} and {rise(numbers['contribution_p90_c'])}. {BAND_NOTE}"
         )
     sure = numbers["marked"]["confidence"]
-    parts = [f"{count} {word}" for word, count in sure.items() if count and word != "no remark"]
+    parts = [f"{count} {word}" for word, count in sure.items() if count]
     if parts:
         sentences.append(f"How sure, by county: {', '.join(parts)}.")
     return sentences

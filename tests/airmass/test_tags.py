@@ -204,7 +204,6 @@ def test_a_county_without_input_is_blank_and_leaves_the_others_alone(make, quick
         assert np.array_equal(np.isnan(found.county[name]), missing)
     assert np.isnan(found.hourly["contribution_c"][3, 3]).all()
     assert np.abs(unaccounted_by_day(found.ledger)).max() < 1e-6
-    assert (found.county["confidence_code"][missing] == 0).all()
 
 
 def test_a_front_takes_the_tags_with_it(make, quick):

@@ -6,6 +6,7 @@ import pytest
 
 from etflux.findings import Finding
 from etflux.results import SCHEMA_VERSION, columns, confidence, summarise, table_names, water_budget
+from etflux.results.summary import CONFIDENCE
 from etflux.results.tables import column_kind, free_text, guarded, unguarded
 from etflux.variables import flag_bits, quantities
 
@@ -136,10 +137,13 @@ def test_findings_table_has_errors_first(make):
     assert table["remedy"].str.endswith(".").all()
 
 
-def test_confidence_goes_from_no_value_to_no_remark():
+def test_confidence_is_the_worst_word_that_a_county_earns():
     bits = flag_bits("air")
-    flags = [bits["saturated"], bits["represented_low"] | bits["cumulus"], bits["cumulus"], 0, 0]
-    assert confidence(flags, [0, 0, 0, 1, 0], [np.nan, 2.0, 2.0, 2.0, 2.0]).tolist() == [0, 1, 2, 2, 3]
+    flags = [bits["saturated"], bits["represented_low"] | bits["cumulus"], bits["cumulus"] | bits["forecast"],
+             bits["forecast"], 0, 0, 0]  # fmt: skip
+    km = [10.0, 10.0, 10.0, 10.0, 10.0, 200.0, 10.0]
+    found = confidence(flags, [0, 0, 0, 0, 1, 0, 0], [np.nan, 2.0, 2.0, 2.0, 2.0, 2.0, 2.0], km)
+    assert [CONFIDENCE[code] for code in found] == ["no value", "a range only", "low", "fair", "fair", "fair", "good"]
 
 
 def test_summary_is_recomputed_from_the_tables(small):
