@@ -3,21 +3,26 @@
 MetPy (May et al. 2022, Bull. Amer. Meteor. Soc. 103, E2273) is the witness; the columns are invented.
 """
 
+import subprocess
 import sys
 from dataclasses import replace
+from pathlib import Path
 
 import numpy as np
 import pytest
 
-from etflux import air_checks, convection, humidity
+from etflux import air_checks, column, convection, humidity
 from etflux.case import Case, Settings, with_settings
 from etflux.column import EDGES
 from etflux.findings import NotInstalled
 from etflux.humidity import FREEZING_K, GAS_CONSTANT_DRY, HEAT_CAPACITY_AIR
+from etflux.run import run_case
+from etflux.workbook import read
 
 calc = pytest.importorskip("metpy.calc")
 from metpy.units import units  # noqa: E402
 
+EXAMPLE = Path(__file__).parents[1] / "station_examples" / "tallgrove_us.xlsx"
 MIDDLE = 0.5 * (EDGES[1:] + EDGES[:-1])
 PRESSURE = np.array([98.0, 97.0, 95.0])
 MIXED = np.array([1500.0, 1100.0, 1900.0])
@@ -204,3 +209,58 @@ NAMES = [
     for part in ("mixed", "most")
     for end in ("", "_without_crops")
 ]
+
+
+@pytest.fixture(scope="module")
+def asked():
+    """The invented county with CAPE for two days, run."""
+    case, _, _ = read(EXAMPLE)
+    wanted = with_settings(case.settings, air_cape=True, cape_days=2, air_worlds=False, air_ranges=False)
+    return run_case(replace(case, settings=wanted))
+
+
+def test_a_run_has_the_energy_of_the_days_asked_for(asked):
+    table = asked.table("county_daily").set_index("date")
+    brief = np.datetime64(asked.settings["brief_date"] or table.index[-1], "D")
+    there = table["cape_mixed_j_kg"].notna()
+    assert set(table.index[there].to_numpy().astype("datetime64[D]")) <= {brief - 1, brief}
+    assert there.any()
+    shown = table[there]
+    assert (shown["cape_most_j_kg"] >= shown["cape_mixed_j_kg"]).all()
+    wetter = shown[shown["contribution_c"] > 0.5]
+    assert len(wetter)
+    assert (wetter["cape_mixed_j_kg"] >= wetter["cape_mixed_without_crops_j_kg"]).all()
+
+
+def test_the_runs_mixed_parcel_is_that_of_the_county_table(asked):
+    """Its CAPE is MetPy's for a parcel of the table's temperature and dew point in the same surroundings."""
+    county = asked.county
+    day = int(np.flatnonzero(np.isfinite(county["cape_mixed_j_kg"].to_numpy()[:, 0]))[-1])
+    of = county.isel(date=day, county_id=0)
+    profile = county.isel(county_id=0).sel(profile_date=of["date"].to_numpy())
+    theta = profile["profile_theta_c"].to_numpy().astype(float)[None] + FREEZING_K
+    q = profile["profile_humidity_g_kg"].to_numpy().astype(float)[None] / 1000.0
+    dew, warm = of["dew_point_mixed_c"].item(), of["theta_mixed_c"].item()
+    ground = humidity.pressure_from_elevation(read(EXAMPLE)[0].table("counties")["elevation_m"].to_numpy()[:1])
+    mixed = humidity.specific_humidity(humidity.vapour_pressure_from_dew_point(dew), ground)
+    height = column.heights(theta, q, ground)[0]
+    mass = np.interp(of["mixing_depth_m"].item(), height, EDGES)
+    sounding = convection.levels(
+        ground, *convection.afternoon(theta, q, [mass], [warm + FREEZING_K], mixed), [warm + FREEZING_K], mixed
+    )
+    p, t, td = (values[0] for values in sounding)
+    cape, _ = calc.surface_based_cape_cin(p * units.hPa, t * units.degC, td * units.degC)
+    assert of["cape_mixed_j_kg"].item() == pytest.approx(cape.m, rel=1e-3)
+
+
+def test_without_the_setting_a_run_has_no_energy_and_loads_no_metpy():
+    code = (
+        "import sys; from dataclasses import replace; from etflux.case import with_settings; "
+        "from etflux.workbook import read; from etflux.run import run_case; "
+        f"case = read({str(EXAMPLE)!r})[0]; "
+        "quick = with_settings(case.settings, air_worlds=False, air_ranges=False); "
+        "found = run_case(replace(case, settings=quick)); "
+        "print('metpy' in sys.modules, 'cape_mixed_j_kg' in found.county)"
+    )
+    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
+    assert done.stdout.split() == ["False", "False"]

@@ -197,7 +197,7 @@ def _take(block: Block, kept: list[Sounding]) -> None:
         if not len(use):
             block.say("soundings-none", None, None, None, "no level has pressure, temperature and humidity", where)
             continue
-        use = use[np.argsort(-sounding.pressure_kpa[use], kind="stable")]
+        use = _rising(sounding, use)
         if not sounding.surface[use[0]]:
             block.say("sounding-surface", None, None, f"{sounding.time} UTC", "", where)
         for name, values in _columns(sounding, use).items():
@@ -205,6 +205,15 @@ def _take(block: Block, kept: list[Sounding]) -> None:
         block.rows += sounding.lines[use].tolist()
     block.columns = {name: np.concatenate(values) for name, values in pieces.items()}
     block.understood = True
+
+
+def _rising(sounding: Sounding, use: np.ndarray) -> np.ndarray:
+    """Levels in order of pressure, without those that lie no higher than one before: heights are whole metres."""
+    use = use[np.argsort(-sounding.pressure_kpa[use], kind="stable")]
+    height = np.nan_to_num(sounding.height_m[use], nan=-np.inf)
+    before = np.concatenate([[-np.inf], np.maximum.accumulate(height)[:-1]])
+    falling = np.diff(sounding.pressure_kpa[use], prepend=np.inf) < 0.0
+    return use[falling & ((height > before) | np.isneginf(height))]
 
 
 def _columns(sounding: Sounding, use: np.ndarray) -> dict[str, np.ndarray]:

@@ -158,6 +158,14 @@ def test_air_too_dry_for_a_dew_point_is_told_by_its_relative_humidity(book):
     assert not [found for found in findings if found.table == "profiles"]
 
 
+def test_levels_that_lie_no_higher_than_the_one_before_are_left_out(book, block):
+    """Heights are whole metres: close levels of a fine sounding may share one, and no workbook cell can be mended."""
+    fine = [*LEVELS[:2], (150, 966.9, 18.0, 12.4), (149, 966.5, 18.0, 12.4), *LEVELS[2:]]
+    found = block(sounding(fine))
+    np.testing.assert_array_equal(found.columns["height_m"], [row[0] for row in LEVELS])
+    assert not [said for said in check(book("fine.xlsx", {"site.txt": sounding(fine)})) if said.table == "profiles"]
+
+
 def test_without_a_surface_level_the_lowest_is_the_ground_and_it_is_said(block):
     rows = sounding()
     rows[1] = "20" + rows[1][2:]
