@@ -1,4 +1,4 @@
-"""The air by height, and the dew point estimated against the observed one."""
+"""The air by height: the morning and the mixed layer, with and without the crops' water."""
 
 from __future__ import annotations
 
@@ -8,9 +8,9 @@ import numpy as np
 import pandas as pd
 
 from etflux.brief import style
-from etflux.brief.quantities import county_position
+from etflux.brief.quantities import county_position, represented_least_pct
 from etflux.brief.style import INK, SOFT, Box, Size
-from etflux.results.summary import confidence, values
+from etflux.results.summary import values
 from etflux.variables import System, from_si, quantity, words_of
 
 if TYPE_CHECKING:
@@ -21,7 +21,6 @@ if TYPE_CHECKING:
 
 HOURS = (12.0, 15.0, 18.0)
 HOUR_COLOURS = ("#E0A458", "#B0603A", "#522A36")  # light to dark as the day goes on
-HOUR_DASHES = ("solid", "solid", "solid")
 MORNING = "#33617F"
 SHOWN_ABOVE = 1.6  # times the greatest mixing depth
 
@@ -76,8 +75,7 @@ def chosen_county(results: Results, day: np.datetime64) -> str:
     """The ranked county with the largest contribution; the first one where none is ranked."""
     today = results.county.sel(date=day)
     found = values(today, "contribution_c").astype(float)
-    least = float(results.settings.get("represented_least_pct", 70.0))
-    ranked = np.where(values(today, "represented_pct") >= least, found, np.nan)
+    ranked = np.where(values(today, "represented_pct") >= represented_least_pct(results), found, np.nan)
     position = int(np.nanargmax(ranked)) if np.isfinite(ranked).any() else 0
     return str(results.county["county_id"].to_numpy()[position])
 
@@ -220,111 +218,3 @@ def _fit(axes: Axes, height: Any, curves: list[Any], mixed: Any, top_m: float, n
         low, high = from_si([every.min(), every.max()], name, system)
         room = 0.06 * max(high - low, 1.0)
         axes.set_xlim(low - room, high + room)
-
-
-def estimated_and_observed(results: Results, days: np.ndarray) -> pd.DataFrame:
-    """Afternoon dew point at 2 m of every county and day that has an observation.
-
-    The estimate is the mixed layer's dew point with the excess near the ground; columns date, county_id, estimated_c,
-    observed_c, careful (whether the estimate carries no remark that makes it a range). [degC]
-    """
-    rows = results.county.sel(date=days)
-    estimated = values(rows, "dew_point_mixed_c") + values(rows, "rise_near_ground_c")
-    error = values(rows, "estimate_error_c")
-    rank = confidence(values(rows, "flags"), values(rows, "provisional"), values(rows, "contribution_c"))
-    there = np.isfinite(estimated) & np.isfinite(error)
-    day, county = np.nonzero(there)
-    return pd.DataFrame({
-        "date": rows["date"].to_numpy()[day], "county_id": rows["county_id"].to_numpy().astype(str)[county],
-        "estimated_c": estimated[there], "observed_c": (estimated - error)[there], "careful": rank[there] >= 2,
-    })  # fmt: skip
-
-
-def dew_point_check(
-    results: Results,
-    days: np.ndarray,
-    *,
-    county: str | None = None,
-    system: System,
-    size: Size,
-    day: np.datetime64 | None = None,
-) -> Figure:
-    """Estimated against observed afternoon dew point, one point for every county and day with an observation.
-
-    `county` leaves only that one; `day` is pointed out.
-    """
-    found = estimated_and_observed(results, days)
-    if county is not None:
-        county_position(results, county)
-        found = found[found["county_id"] == county]
-    figure = style.new_figure(size, 7.6)
-    where = "all counties with an observation" if county is None else style.plain(results.name_of("county", county))
-    notes = ["Counties that share a station share its observation. The estimate is at 2 m: the mixed layer with the "
-             "excess near the ground."]  # fmt: skip
-    box = style.frame(
-        figure, size, results, f"Afternoon dew point, {style.days_words(days)}", f"Estimated against observed; {where}",
-        notes,
-    )  # fmt: skip
-    unit = quantity("dew_point_c").unit_in(system)
-    side = min(0.84 * box.height, (0.56 if size.is_slide else 0.88) * box.width)
-    axes = Box(box.left + 0.09 * box.width, box.bottom + 0.11 * box.height, side, side).axes(figure)
-    style.dress(axes, size, f"Observed ({unit})", f"Estimated ({unit})", grid="both")
-    axes.set_aspect("equal", adjustable="box")
-    x, y = (from_si(found[name], "dew_point_c", system) for name in ("observed_c", "estimated_c"))
-    _draw_points(axes, found, x, y, size, day)
-    ends = np.array([*x, *y])
-    low, high = (float(ends.min()), float(ends.max())) if len(ends) else (0.0, 1.0)
-    room = 0.04 * max(high - low, 1.0)
-    ends = np.array([low - room, high + room])
-    axes.plot(ends, ends, color=SOFT, linewidth=0.7 * size.line_pt, gid="equal", label="equal")
-    axes.set_xlim(ends)
-    axes.set_ylim(ends)
-    words = _error_words(found, system)
-    _beside(figure, box, side, size, axes, words)
-    return figure
-
-
-def _draw_points(
-    axes: Axes, found: pd.DataFrame, x: np.ndarray, y: np.ndarray, size: Size, day: np.datetime64 | None
-) -> None:
-    """Points filled where the estimate stands, open where it is a range only; one day in black."""
-    look: dict[str, Any] = {"linestyle": "none", "marker": "o", "markersize": 0.42 * size.text_pt}
-    careful = found["careful"].to_numpy(bool)
-    if (~careful).any():
-        axes.plot(x[~careful], y[~careful], markerfacecolor="none", markeredgecolor="#9AA5AD", markeredgewidth=0.9,
-                  label="a range only", gid="ranges", **look)  # fmt: skip
-    if careful.any():
-        axes.plot(x[careful], y[careful], color="#4F8AA6", markeredgecolor="#FFFFFF", markeredgewidth=0.4,
-                  label="estimate", gid="estimates", **look)  # fmt: skip
-    if day is not None:
-        today = pd.to_datetime(found["date"]).to_numpy().astype("datetime64[D]") == day
-        if today.any():
-            look["markersize"] = 0.6 * size.text_pt
-            axes.plot(x[today], y[today], color=INK, label=style.short_day(day), gid="day", **look)
-
-
-def _error_words(found: pd.DataFrame, system: System) -> str:
-    """How many, mean error and mean size of the error."""
-    if not len(found):
-        return "No afternoon was observed."
-    error = from_si(found["estimated_c"] - found["observed_c"], "estimate_error_c", system)
-    unit = quantity("estimate_error_c").unit_in(system)
-    sizes = np.abs(error)
-    rows = (f"{len(found)} county-days", f"mean error {error.mean():+.1f} {unit}",
-            f"mean size {sizes.mean():.1f} {unit}", f"half within {np.median(sizes):.1f} {unit}")  # fmt: skip
-    return "\n".join(rows)
-
-
-def _beside(figure: Figure, box: Box, side: float, size: Size, axes: Axes, words: str) -> None:
-    """The key and the errors beside the points, or in their upper corner on a page."""
-    handles = axes.get_legend_handles_labels()[0]
-    if size.is_slide:
-        left = box.left + 0.09 * box.width + side + 0.4
-        style.write(figure, left, box.bottom + 0.95 * box.height, words, size.text_pt, gid="errors", linespacing=1.5)
-        width, height = figure.get_size_inches()
-        at = (left / width, (box.bottom + 0.55 * box.height) / height)
-        style.legend(figure, size, handles, loc="upper left", bbox_to_anchor=at)
-        return
-    axes.text(0.02, 0.98, words, transform=axes.transAxes, va="top", fontsize=size.small_pt * 1.1, color=INK,
-              family=style.FAMILY, gid="errors", linespacing=1.4)  # fmt: skip
-    style.legend(axes, size, handles, loc="lower right")

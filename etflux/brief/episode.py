@@ -8,10 +8,10 @@ import numpy as np
 import pandas as pd
 
 from etflux.brief import style
-from etflux.brief.quantities import county_position, sources_of
+from etflux.brief.quantities import county_position, provisional_note, represented_least_pct, sources_of
 from etflux.brief.style import INK, PAPER, SOFT, Box, Size
 from etflux.results.summary import area_mean, contribution_on, crop_sources, region_contribution, values
-from etflux.variables import System, from_si, quantity, words_of
+from etflux.variables import System, from_si, quantity
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -96,11 +96,11 @@ def episode(results: Results, days: np.ndarray, *, county: str | None = None, sy
     ages = by_age(contribution_by(results, days, "age_d", county))
     low, high = ends_of_range(results, days, county)
     figure = style.new_figure(size, 7.6)
-    where = "area mean of the counties with a value"
+    where = "area mean of the counties that have a value"
     if county is not None:
         where = style.plain(results.name_of("county", county))
     hour = float(results.settings.get("contribution_hour", 15.0))
-    subtitle = f"{where}; at {hour:.0f}:00 local solar time; bars from end to end of the range"
+    subtitle = f"{style.sentence(where)}; at {hour:.0f}:00 local solar time; thin bars: from end to end of the range"
     title = f"What the crops added to the dew point, {style.days_words(days)}"
     box = style.frame(figure, size, results, title, subtitle, _notes(results, days, county))
     top = 1.12 * float(np.nanmax([high, low, ages.sum(axis=1).to_numpy()], initial=0.1))
@@ -119,10 +119,11 @@ def episode(results: Results, days: np.ndarray, *, county: str | None = None, sy
         axes.set_title(name, loc="left", fontsize=size.text_pt, color=INK, family=style.FAMILY, weight="bold")
         unit = quantity("contribution_c").unit_in(system)
         style.dress(axes, size, y_label=f"Added to the dew point ({unit})" if place == 0 or not size.is_slide else "")
-        handles = axes.get_legend_handles_labels()[0][::-1]  # in the order of the stack, the top first
+        seen = np.nan_to_num(numbers).max(axis=0, initial=0.0) > 0.004 * top
+        handles = [bar for bar, there in zip(axes.containers, seen, strict=True) if there][::-1]  # as they are stacked
         style.legend(axes, size, handles, loc="upper left", bbox_to_anchor=(1.01, 1.0), handlelength=1.0)
         step = 1 if len(days) <= 9 else -(-len(days) // 8)
-        axes.set_xticks(range(0, len(days), step), [style.short_day(day) for day in days[::step]])
+        axes.set_xticks(range(0, len(days), step), _tick_words(days[::step]))
     return figure
 
 
@@ -135,12 +136,21 @@ def _place(box: Box, size: Size, number: int) -> Box:
                0.39 * box.height)  # fmt: skip
 
 
+def _tick_words(days: np.ndarray) -> list[str]:
+    """Days of the month, with the month below where it begins."""
+    words = [style.short_day(day).split(" ") for day in days]
+    return [
+        day if number and month == words[number - 1][1] else f"{day}\n{month}"
+        for number, (day, month) in enumerate(words)
+    ]
+
+
 def _age_words(age: int) -> str:
     if age == 0:
         return "same day"
     if age < OLDEST:
         return f"carried {age} day" + ("" if age == 1 else "s")
-    return f"{OLDEST} days, older"
+    return f"{OLDEST} days or more"
 
 
 def _stack(
@@ -159,7 +169,7 @@ def _stack(
     empty = ~np.isfinite(numbers).any(axis=1) if numbers.shape[1] else np.ones(len(days), bool)
     for day in np.flatnonzero(empty):
         axes.axvspan(day - 0.36, day + 0.36, facecolor=PAPER, edgecolor=SOFT, hatch="xxx", linewidth=0.0, gid="missing")
-        axes.text(day, 0.5, "no value", rotation=90, ha="center", va="center", fontsize=size.small_pt, color=INK,
+        axes.text(float(day), 0.5, "no value", rotation=90, ha="center", va="center", fontsize=size.small_pt, color=INK,
                   family=style.FAMILY, transform=axes.get_xaxis_transform(),
                   bbox={"facecolor": PAPER, "edgecolor": "none", "pad": 2.0})  # fmt: skip
     axes.set_xlim(-0.6, len(days) - 0.4)
@@ -177,15 +187,11 @@ def _draw_range(axes: Axes, ends: np.ndarray, size: Size) -> None:
 
 def _notes(results: Results, days: np.ndarray, county: str | None) -> list[str]:
     """How much of what is shown rests on little, or may still move."""
-    rows = results.county.sel(date=days)
-    notes = []
-    least = float(results.settings.get("represented_least_pct", 70.0))
+    shares = values(results.county.sel(date=days), "represented_pct")
     here = slice(None) if county is None else [county_position(results, county)]
-    low = (values(rows, "represented_pct")[:, here] < least).any(axis=0)
+    low = np.asarray((shares[:, here] < represented_least_pct(results)).any(axis=0))
+    notes = []
     if low.any():
-        who = "The county is" if county is not None else f"{int(low.sum())} counties are"
-        notes.append(f"{who} represented to under {least:.0f} %: a range, not ranked.")
-    bits = values(rows, "provisional")[:, here].astype(np.int64)
-    if bits.any():
-        notes.append(f"Provisional: {'; '.join(words_of(int(np.bitwise_or.reduce(bits, axis=None)), 'provisional'))}.")
-    return notes
+        who = "The county is" if county is not None else f"{int(low.sum())} of {len(low)} counties are"
+        notes.append(f"{who} represented to under {represented_least_pct(results):.0f} %: a range, not ranked.")
+    return notes + provisional_note(results, days, county)

@@ -101,11 +101,13 @@ class _Asked:
 def _map(results: Results, shown: Shown, asked: _Asked) -> Figure:
     from etflux.brief.maps import county_map
 
-    return county_map(results, shown, asked.days, cover=asked.cover, scale=asked.scale, **asked.look)
+    return county_map(
+        results, shown, asked.days, cover=asked.cover, county=asked.county, scale=asked.scale, **asked.look
+    )
 
 
 def _volume(results: Results, shown: Shown, asked: _Asked) -> Figure:
-    from etflux.brief.maps import counties_by_volume
+    from etflux.brief.volume import counties_by_volume
 
     return counties_by_volume(results, asked.days, county=asked.county, **asked.look)
 
@@ -131,7 +133,7 @@ def _profile(results: Results, shown: Shown, asked: _Asked) -> Figure:
 
 
 def _dew_point(results: Results, shown: Shown, asked: _Asked) -> Figure:
-    from etflux.brief.air import dew_point_check
+    from etflux.brief.dew_point import dew_point_check
 
     last = asked.days[-1]
     days = asked.days if asked.span else results.dates[results.dates <= last]

@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Literal
 import numpy as np
 
 from etflux.findings import Finding, ProblemsFound
-from etflux.variables import System, from_si, quantity
+from etflux.variables import System, from_si, quantity, words_of
 
 if TYPE_CHECKING:
     import xarray as xr
@@ -35,6 +35,17 @@ class Shown:
     palette: str = "flow"
     ranked: bool = False
     dark_low: bool = False
+
+    @property
+    def of_air(self) -> bool:
+        """Whether it is a property of the mixed air."""
+        return self.name.startswith(("dew_point", "humidity", "lcl", "theta"))
+
+    @property
+    def hour(self) -> bool:
+        """Whether it is of the run's hour of the contribution."""
+        fixed = ("contribution_12_c", "contribution_18_c", "contribution_peak_c")
+        return self.figure == "map" and (self.ranked or self.of_air) and self.name not in fixed
 
     @property
     def by_cover(self) -> bool:
@@ -119,7 +130,7 @@ QUANTITIES: Mapping[str, Shown] = {
 
 def unknown(code: str, what: str, value: object, known: Iterable[str]) -> ProblemsFound:
     """The problem of a word that is none of the known ones, with the nearest of them."""
-    spelled = {word.casefold(): word for word in known}
+    spelled = {str(word).casefold(): str(word) for word in known}
     close = get_close_matches(str(value).casefold(), spelled, n=1, cutoff=0.3)
     detail = f"the nearest known is {spelled[close[0]]!r}" if close else ""
     return ProblemsFound([Finding(code, what, value=str(value), detail=detail)])
@@ -159,6 +170,26 @@ def county_position(results: Results, county: str) -> int:
     if county not in ids:
         raise unknown("id-not-in-results", "county", county, ids)
     return ids.index(county)
+
+
+def represented_least_pct(results: Results) -> float:
+    """Share of a county under which its contribution is a range, and not ranked. [%]"""
+    return float(results.settings.get("represented_least_pct", 70.0))
+
+
+def provisional_note(results: Results, days: np.ndarray, county: str | None = None) -> list[str]:
+    """One sentence on days that rest on estimates or may still move; none where there are none."""
+    rows = results.county.sel(date=days)
+    if "provisional" not in rows:
+        return []
+    here = slice(None) if county is None else slice(county_position(results, county), None)
+    bits = rows["provisional"].to_numpy().astype(np.int64)[:, here]
+    bits = bits if county is None else bits[:, :1]
+    number = int((bits != 0).any(axis=0).sum())
+    if not number:
+        return []
+    where = f" in {number} of {bits.shape[1]} counties" if county is None else ""
+    return [f"Provisional{where}: {'; '.join(words_of(int(np.bitwise_or.reduce(bits, axis=None)), 'provisional'))}."]
 
 
 def sources_of(results: Results) -> list[str]:

@@ -186,7 +186,7 @@ def _draw_coming(axes: Axes, unit: xr.Dataset, x: np.ndarray, size: Size, system
     """Rain and irrigation of each day, one on the other."""
     rain = from_si(unit["rain_stand_mm"].to_numpy(), "rain_stand_mm", system)
     given = from_si(unit["irrigation_mm"].to_numpy(), "irrigation_mm", system)
-    style.dress(axes, size, y_label=f"Came ({quantity('rain_stand_mm').unit_in(system)})")
+    style.dress(axes, size, y_label=f"Water in ({quantity('rain_stand_mm').unit_in(system)})")
     handles = [axes.bar(x, rain, TOOTH, color=style.FELL, gid="rain", label="rain, snow")]
     if np.nan_to_num(given).any():
         bars = axes.bar(x, given, TOOTH, bottom=np.nan_to_num(rain), color=style.GIVEN, gid="irrigation",

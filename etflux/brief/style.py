@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from functools import cache
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 
@@ -26,6 +26,7 @@ FAMILY = "DejaVu Sans"  # comes with matplotlib, so a figure looks alike everywh
 PAPER = "#FFFFFF"
 HELD, HELD_EDGE = "#8FB3C7", "#33617F"  # water held in the soil
 FELL, GIVEN = "#33617F", "#D98E2B"  # rain, irrigation
+UNRANKED_HATCH, MISSING_HATCH, GAPS_HATCH = "///", "xxx", "..."
 CAUTION = "Planning estimate, not a warning product or an official forecast."
 
 # Light to dark, luminance falling evenly, so that they keep their order in grey and for every kind of colour vision;
@@ -182,6 +183,23 @@ def wrapped(text: str, points: float, room_in: float, lines: int, bold: bool = F
     return "\n".join(done + rest)
 
 
+def sentence(text: str) -> str:
+    """The text with a capital at its beginning.
+
+    Examples
+    --------
+    >>> sentence("area mean"), sentence("")
+    ('Area mean', '')
+    """
+    return text[:1].upper() + text[1:]
+
+
+def station_look(size: Size) -> dict[str, Any]:
+    """How a weather station is drawn."""
+    return {"linestyle": "none", "marker": "^", "markersize": 0.55 * size.text_pt, "markerfacecolor": PAPER,
+            "markeredgecolor": INK, "markeredgewidth": 1.1}  # fmt: skip
+
+
 def write(figure: Figure, x_in: float, y_in: float, text: str, points: float, **options: Any) -> Text:
     """Text at a place in inches."""
     width, height = figure.get_size_inches()
@@ -212,9 +230,9 @@ def frame(figure: Figure, size: Size, results: Results, title: str, subtitle: st
     return Box(margin, bottom, room, top - 0.6 * line - bottom)
 
 
-def dress(axes: Axes, size: Size, x_label: str = "", y_label: str = "", grid: str | None = "y") -> None:
+def dress(axes: Axes, size: Size, x_label: str = "", y_label: str = "", grid: Literal["x", "y", "both"] = "y") -> None:
     """Put axes into the style: labels with units, quiet ticks, a faint grid behind the values."""
-    font = {"family": FAMILY, "fontsize": size.text_pt, "color": INK}
+    font: dict[str, Any] = {"family": FAMILY, "fontsize": size.text_pt, "color": INK}
     axes.set_xlabel(x_label, **font)
     axes.set_ylabel(y_label, **font)
     axes.tick_params(labelsize=size.small_pt * 1.1, colors=INK, length=size.text_pt / 4.0, color=RULE, width=0.8,
@@ -223,8 +241,7 @@ def dress(axes: Axes, size: Size, x_label: str = "", y_label: str = "", grid: st
         spine.set_visible(side in {"left", "bottom"})
         spine.set_color(RULE)
     axes.set_axisbelow(True)
-    if grid:
-        axes.grid(True, axis=grid, color=FAINT, linewidth=0.8)
+    axes.grid(True, axis=grid, color=FAINT, linewidth=0.8)
 
 
 def legend(target: Axes | Figure, size: Size, handles: Sequence[Any], **options: Any) -> Any:
