@@ -168,9 +168,7 @@ def _mornings(block: Block, found: Contents, first: np.datetime64, last: np.date
             repeated += before is not None
             if before is None or _usable(sounding).sum() >= min(LEAST_LEVELS, _usable(before).sum()):
                 best[key] = sounding
-    if no_place:
-        where, count = f"{block.origin.name} line {no_place[0].line}", len(no_place)
-        block.say("sounding-place", detail=f"{count} soundings" if count > 1 else "", place=where)
+    _say_once(block, "sounding-place", no_place)
     counts = {"of other days": other_days, "at other hours": other_hours, "earlier on the same morning": repeated}
     left = ", ".join(f"{count:,} {words}" for words, count in counts.items() if count)
     if not best:
@@ -191,20 +189,29 @@ def _usable(sounding: Sounding) -> np.ndarray:
 def _take(block: Block, kept: list[Sounding]) -> None:
     """Soundings to rows from the ground up."""
     pieces: dict[str, list[np.ndarray]] = {}
+    bare, groundless = [], []
     for sounding in kept:
-        use = np.flatnonzero(_usable(sounding))
-        where = f"{block.origin.name} line {sounding.line}"
+        use = _rising(sounding, np.flatnonzero(_usable(sounding)))
         if not len(use):
-            block.say("soundings-none", None, None, None, "no level has pressure, temperature and humidity", where)
+            bare.append(sounding)
             continue
-        use = _rising(sounding, use)
         if not sounding.surface[use[0]]:
-            block.say("sounding-surface", None, None, f"{sounding.time} UTC", "", where)
+            groundless.append(sounding)
         for name, values in _columns(sounding, use).items():
             pieces.setdefault(name, []).append(values)
         block.rows += sounding.lines[use].tolist()
+    _say_once(block, "sounding-bare", bare)
+    _say_once(block, "sounding-surface", groundless)
     block.columns = {name: np.concatenate(values) for name, values in pieces.items()}
     block.understood = True
+
+
+def _say_once(block: Block, code: str, soundings: list[Sounding]) -> None:
+    """A remark at the header of the first sounding that earns it, with the count of the others."""
+    if soundings:
+        first, more = soundings[0], len(soundings) - 1
+        place = f"{block.origin.name} line {first.line}"
+        block.say(code, None, None, f"{first.time} UTC", f"and {more:,} more" if more else "", place)
 
 
 def _rising(sounding: Sounding, use: np.ndarray) -> np.ndarray:

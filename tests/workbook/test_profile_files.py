@@ -174,6 +174,27 @@ def test_without_a_surface_level_the_lowest_is_the_ground_and_it_is_said(block):
     assert found.columns["height_m"][0] == 0.0
 
 
+def test_what_many_soundings_lack_is_said_once(block):
+    days = [f"2031 06 {day}" for day in range(11, 16)]
+    lines = [line for day in days for line in sounding(day=day)]
+    found = block(["2" + "0" + line[2:] if line.startswith("21") else line for line in lines])
+    assert [(said.code, said.detail) for said in found.findings] == [("sounding-surface", "and 4 more")]
+    winds = [text for day in days[:2] for text in (header(1, day=day), level("21", 984.0, 250, 15.0, None))]
+    found = block([*winds, *sounding()])
+    assert [(said.code, said.place) for said in found.findings] == [("sounding-bare", "site.txt line 1")]
+    assert found.findings[0].detail == "and 1 more"
+
+
+def test_a_surface_level_without_a_height_leaves_the_pressures(block):
+    """As in most soundings from the telecommunications network: the ground's own height is not sent."""
+    rows = sounding()
+    rows[1] = rows[1].replace("B  250B", "B-9999 ") + " "
+    found = block(rows)
+    assert not found.findings
+    assert np.isnan(found.columns["height_m"]).all()
+    np.testing.assert_allclose(found.columns["pressure_kpa"], [row[1] / 10.0 for row in LEVELS])
+
+
 WHOLE = sounding()
 BROKEN = {  # file, place, code, a part of the detail
     "a level cut": ([*WHOLE[:4], WHOLE[4][:30], *WHOLE[5:]], "site.txt line 5", "sounding-line", "51 characters"),
