@@ -11,7 +11,7 @@ from typing import Any
 __version__ = "0.1.0"
 
 _HOME = {
-    "run_workbook": "etflux.workbook.job",
+    "run_workbook": "etflux.job",
     "run_case": "etflux.run",
     "Results": "etflux.results",
     "check": "etflux.workbook",

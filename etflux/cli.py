@@ -79,7 +79,7 @@ def run(
     quiet: Annotated[bool, typer.Option("-q", "--quiet", help="Print nothing unless something is wrong.")] = False,
 ) -> None:
     """Compute crop water use and its moisture in the air, and write the brief and the tables."""
-    from etflux.workbook.job import results_folder, run_workbook, summary_text
+    from etflux.job import results_folder, run_workbook, summary_text
 
     with _progress(quiet) as progress:
         results = run_workbook(file, output=output, on=on, progress=progress, draws=draws)

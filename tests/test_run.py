@@ -15,9 +15,11 @@ import xarray as xr
 import etflux
 from etflux import assemble, counties, humidity, workbook
 from etflux.case import Case, with_settings
+from etflux.job import moved_days, run_workbook
+from etflux.results.rests import rests_on
 from etflux.results.summary import CONFIDENCE, confidence
 from etflux.run import run_case
-from etflux.workbook.job import moved_days, run_workbook
+from etflux.workbook.report import write_report
 from etflux.workbook.report_words import WORLD_SENTENCES
 
 EXAMPLES = Path(__file__).parents[1] / "station_examples"
@@ -370,3 +372,30 @@ def test_confidence_in_the_table_is_that_of_its_own_columns(written):
     again = confidence(daily["flags"], daily["provisional"], daily["contribution_c"], daily["profile_distance_km"])
     assert (again == daily["confidence_code"]).all()
     assert set(daily["confidence_code"]) >= {0, 1, 2, 3}
+
+
+def test_with_a_station_and_the_balloon_missing_the_brief_names_what_stands_in(basin, tmp_path):
+    weather = basin.table("weather")
+    last = pd.Timestamp("2031-07-27")
+    station = weather["station_id"].iloc[0]
+    gone = (weather["station_id"] == station) & (weather["date"] == last)
+    assert gone.sum() == 1
+    kept = weather[~gone & (weather["date"] <= last)].reset_index(drop=True)
+    profiles = basin.table("profiles")
+    profiles = profiles[profiles["time"] < last].reset_index(drop=True)
+    small = without_extras(basin)
+    case = Case(small.settings, {**basin.tables, "weather": kept, "profiles": profiles}, basin.source)
+    results = run_case(with_end(case, last))
+    rests = {part.name: part for part in rests_on(results, np.datetime64("2031-07-27"))}
+    assert rests["Weather"].fallback
+    assert "temperature from a neighbour at 2" in rests["Weather"].text  # a morning observer has read the day only in part
+    assert rests["Morning air"].text.startswith("no balloon: standard profile in all counties")
+    write_report(results, tmp_path / "brief.xlsx", on="2031-07-27")
+    text = str(openpyxl.load_workbook(tmp_path / "brief.xlsx")["Brief"]["A8"].value)
+    assert rests["Weather"].text in text
+    assert "no balloon: standard profile in all counties" in text
+    assert np.isfinite(results.county["contribution_c"].sel(date=last)).sum() > 12
+
+
+def with_end(case: Case, last: pd.Timestamp) -> Case:
+    return Case(with_settings(case.settings, season_end=str(last.date())), case.tables, case.source)

@@ -12,6 +12,7 @@ import numpy as np
 import pandas as pd
 
 from etflux.results import confidence
+from etflux.results.rests import rests_on
 from etflux.results.summary import CONFIDENCE, says_stress, values
 from etflux.variables import System, from_si, quantity
 from etflux.workbook.report_charts import charts_of
@@ -48,7 +49,7 @@ if TYPE_CHECKING:
 
     from etflux.results import Results
 
-WIDTHS = (17, 8, 9, 8, 8, 8, 10, 8, 8, 13, 14, 1.5, 9, 9, 9, 9, 9)
+WIDTHS = (17, 8, 9, 8, 8, 8, 10, 8, 8, 12, 16, 1.5, 9, 9, 9, 9, 9)
 LAST_OF_TABLE, CHART_COLUMN, LAST = 10, 12, len(WIDTHS) - 1
 TILES = ((0, 1), (2, 4), (5, 7), (8, 9), (10, 12), (13, LAST))
 MOST_COUNTIES = 30
@@ -76,7 +77,7 @@ def write_brief(
     text = paragraph(results, numbers, system)
     sheet.merge_range(6, 0, 6, LAST, text, look.wrapped(font_size=10))
     sheet.set_row(6, 13.5 * lines_of(text, sum(WIDTHS), 10) + 2)
-    sheet.set_row(7, 6)
+    _rests(results, sheet, look, day)
     few = results.county.sizes["county_id"] <= FEW_COUNTIES
     end, legend = _county_table(results, sheet, look, system, day, 8)
     if few:
@@ -95,6 +96,21 @@ def _head(results: Results, sheet: Worksheet, look: Look, numbers: dict[str, Any
     sheet.merge_range(1, 0, 1, LAST, "", look())
     season = f"Record {numbers['first_day']} to {numbers['last_day']}. {identity_line(results)}"
     sheet.write_string(1, 0, season, look(font_color=SOFT))
+
+
+def _rests(results: Results, sheet: Worksheet, look: Look, day: np.datetime64) -> None:
+    """What the day rests on, with what stands in for a missing station, balloon or wind in bold."""
+    parts = rests_on(results, day)
+    plain, strong = look(font_size=8, font_color=SOFT), look(font_size=8, bold=True)
+    rich: list[Any] = [plain, "Rests on "]
+    for place, part in enumerate(parts):
+        rich += [strong if part.fallback else plain, f"{part.name.lower()}: {part.text}"]
+        rich += [plain, "." if place == len(parts) - 1 else "; "]
+    text = "".join(piece for piece in rich if isinstance(piece, str))
+    shape = look.wrapped(font_size=8)
+    sheet.merge_range(7, 0, 7, LAST, "", shape)
+    sheet.write_rich_string(7, 0, *rich, shape)
+    sheet.set_row(7, 11.5 * lines_of(text, sum(WIDTHS), 8) + 5)
 
 
 def _tiles(sheet: Worksheet, look: Look, numbers: dict[str, Any], system: System) -> None:
