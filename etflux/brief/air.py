@@ -138,7 +138,7 @@ def _two_axes(figure: Figure, box: Box, size: Size) -> list[Axes]:
 def _top(morning: pd.DataFrame, hours: pd.DataFrame, here: Any) -> float:
     """Height that the figure reaches. [m]"""
     depths = [*hours["mixing_depth_m"], _world(here)[1]]
-    greatest = float(np.nanmax(depths, initial=0.0))
+    greatest = style.greatest(depths)
     if greatest > 0.0:
         return max(SHOWN_ABOVE * greatest, 800.0)
     return min(float(morning["height_m"].max()), 3000.0) if len(morning) else 1000.0

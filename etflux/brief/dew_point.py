@@ -67,7 +67,7 @@ def dew_point_check(
         Day to point out.
     """
     found = estimated_and_observed(results, days)
-    where = "all counties with an observation"
+    where = "afternoons of all counties with an observation"
     if county is not None:
         county_position(results, county)
         found = found[found["county_id"] == county]
@@ -76,8 +76,8 @@ def dew_point_check(
     notes = ["Counties that share a station share its observation. The estimate is at 2 m: the mixed layer with the "
              "excess near the ground."]  # fmt: skip
     box = style.frame(
-        figure, size, results, f"Afternoon dew point, {style.days_words(days)}",
-        f"Estimated against observed; {where}; {_error_words(found, system)}", notes,
+        figure, size, results, f"Dew point, estimated and observed, {style.days_words(days)}",
+        style.sentence(f"{where}; {_error_words(found, system)}"), notes,
     )  # fmt: skip
     under, left = 3.3 * size.text_pt / 72.0, 0.075 * box.width if size.is_slide else 0.1 * box.width
     if size.is_slide:

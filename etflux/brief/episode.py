@@ -103,7 +103,7 @@ def episode(results: Results, days: np.ndarray, *, county: str | None = None, sy
     subtitle = f"{style.sentence(where)}; at {hour:.0f}:00 local solar time; thin bars: from end to end of the range"
     title = f"What the crops added to the dew point, {style.days_words(days)}"
     box = style.frame(figure, size, results, title, subtitle, _notes(results, days, county))
-    top = 1.12 * float(np.nanmax([high, low, ages.sum(axis=1).to_numpy()], initial=0.1))
+    top = 1.12 * style.greatest([high, low, ages.sum(axis=1).to_numpy()], 0.1)
     top = from_si(top, "contribution_c", system).item()
     for place, name, frame, colours, labels in (
         (0, "By cover", covers, [style.source_colour(str(name), order) for name in covers], list(covers)),
@@ -132,7 +132,7 @@ def _place(box: Box, size: Size, number: int) -> Box:
     if size.is_slide:
         return Box(box.left + 0.06 * box.width + number * 0.5 * box.width, box.bottom + 0.08 * box.height,
                    0.29 * box.width, 0.84 * box.height)  # fmt: skip
-    return Box(box.left + 0.09 * box.width, box.bottom + (0.53 - 0.49 * number) * box.height, 0.68 * box.width,
+    return Box(box.left + 0.09 * box.width, box.bottom + (0.55 - 0.51 * number) * box.height, 0.68 * box.width,
                0.39 * box.height)  # fmt: skip
 
 

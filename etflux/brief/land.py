@@ -83,7 +83,7 @@ class Land:
     @cached_property
     def over_the_date_line(self) -> bool:
         """Whether western longitudes are counted on past 180."""
-        return bool(np.nanmax(self.longitude_deg, initial=0.0) > 180.0)
+        return style.greatest(self.longitude_deg) > 180.0
 
 
 def land_of(results: Results) -> Land:

@@ -11,7 +11,7 @@ import numpy as np
 from etflux.brief import style
 from etflux.brief.quantities import Shown, represented_least_pct
 from etflux.brief.style import FAINT, GAPS_HATCH, INK, MISSING_HATCH, PAPER, RULE, SOFT, UNRANKED_HATCH, Box, Size
-from etflux.variables import flag_bits, words_of
+from etflux.variables import System, flag_bits, words_of
 
 if TYPE_CHECKING:
     from matplotlib.colors import BoundaryNorm, Colormap
@@ -33,8 +33,13 @@ class Scale(NamedTuple):
         return self.palette(self.steps(value))
 
 
-def scale_of(values: Sequence[np.ndarray], shown: Shown, ends: tuple[float, float] | None) -> Scale:
-    """Steps over all values, or from end to end of a given scale, beyond which there is one more on each side."""
+def scale_of(
+    values: Sequence[np.ndarray], shown: Shown, system: System, ends: tuple[float, float] | None = None
+) -> Scale:
+    """Steps over all values in the unit shown, none finer than the last digit worth printing.
+
+    With given `ends` the steps go from one to the other, and there is one more on each side.
+    """
     from matplotlib.colors import BoundaryNorm
     from matplotlib.ticker import MaxNLocator
 
@@ -44,10 +49,14 @@ def scale_of(values: Sequence[np.ndarray], shown: Shown, ends: tuple[float, floa
         low, high = ends
         if not low < high:
             raise ValueError(f"the ends of a scale must rise: {ends}")
-    elif high - low < 1e-9:
-        low, high = (low, high + max(0.1 * high, 0.1)) if low >= 0.0 else (low - 0.1 * abs(low), high + 0.1 * abs(low))
-    edges = MaxNLocator(nbins=STEPS, steps=[1, 2, 2.5, 5, 10], min_n_ticks=4).tick_values(low, high)
+    digit = 10.0 ** -shown.decimals(system)
+    locator = MaxNLocator(nbins=STEPS, steps=[1, 2, 2.5, 5, 10])
+    edges = np.asarray(locator.tick_values(low, max(high, low + digit)), float)
+    if edges[1] - edges[0] < 0.999 * digit:
+        edges = digit * np.arange(np.floor(low / digit + 1e-9), np.ceil(high / digit - 1e-9) + 1.0)
     palette = style.sequential(shown.palette, shown.dark_low)
+    if len(edges) < 3:
+        edges = edges[0] + (edges[-1] - edges[0]) * np.arange(3)
     return Scale(palette, BoundaryNorm(edges, palette.N, extend="neither" if ends is None else "both"))
 
 

@@ -18,7 +18,7 @@ from etflux.brief.quantities import (
     represented_least_pct,
     sources_of,
 )
-from etflux.brief.style import GAPS_HATCH, INK, MISSING_HATCH, PAPER, SOFT, UNRANKED_HATCH, Box, Size
+from etflux.brief.style import GAPS_HATCH, INK, MISSING_HATCH, PAPER, RULE, SOFT, UNRANKED_HATCH, Box, Size
 from etflux.variables import System, from_si, quantity
 
 if TYPE_CHECKING:
@@ -78,12 +78,12 @@ def county_map(
     figure = style.new_figure(size, _page_height(land, len(panels), bool(ends)))
     title = shown.label if cover is None else f"{shown.label}: {_cover_words(results, cover)}"
     box = style.frame(
-        figure, size, results, f"{title}, {style.days_words(days)}", _subtitle(results, shown, days),
+        figure, size, results, f"{title}, {style.days_words(days)}", _subtitle(results, shown, days, cover),
         provisional_note(results, days),
     )  # fmt: skip
     main, side, small = _places(box, size, len(panels), bool(ends))
     unranked = unranked_counties(results, shown, days)
-    colours = scale_of([panel.values for panel in panels], shown, scale)
+    colours = scale_of([panel.values for panel in panels], shown, system, scale)
     marks: set[str] = set()
     for place, panel in zip(main, panels, strict=True):
         axes = place.axes(figure)
@@ -105,7 +105,7 @@ def county_map(
     }
     draw_key(figure, side, under, size, {name: text for name, text in words.items() if name in marks})
     if ends:
-        _draw_ends(figure, small, land, ends, shown, unranked, size, scale)
+        _draw_ends(figure, small, land, ends, shown, unranked, size, system, scale)
     return figure
 
 
@@ -114,7 +114,12 @@ def _page_height(land: Land, panels: int, ends: bool) -> float:
     wide = style.SIZES["page"].width_in
     one = min(wide * land.shape, 6.5) + 0.3
     several = -(-panels // 2) * (min(0.5 * wide * land.shape, 4.0) + 0.3)
-    return 1.45 + (one if panels == 1 else several) + (2.0 if ends else 1.6)
+    return 1.45 + (one if panels == 1 else several) + _below(panels, ends)
+
+
+def _below(panels: int, ends: bool) -> float:
+    """Room for the scale and its key under the maps of a page. [in]"""
+    return 1.9 if ends else 1.5 if panels == 1 else 1.1
 
 
 def _places(box: Box, size: Size, panels: int, ends: bool) -> tuple[list[Box], Box, Box]:
@@ -124,7 +129,7 @@ def _places(box: Box, size: Size, panels: int, ends: bool) -> tuple[list[Box], B
         side = box.part(0.71, 0.46 if ends else 0.0, 0.29, 0.54 if ends else 1.0)
         small = box.part(0.71, 0.0, 0.29, 0.44)
     else:
-        below = 1.9 if ends else 1.5
+        below = _below(panels, ends)
         maps = Box(box.left, box.bottom + below + 0.25, box.width, box.height - below - 0.25)
         side = Box(box.left, box.bottom, (0.5 if ends else 1.0) * box.width, below)
         small = Box(box.left + 0.54 * box.width, box.bottom, 0.46 * box.width, below)
@@ -191,7 +196,7 @@ def _draw_panel(
 ) -> set[str]:
     """Counties in colour; hatching over what has no value, is not ranked, or leaves days out. What was hatched."""
     has = np.isfinite(panel.values)
-    for shapes, here in draw_shapes(axes, land, has, "counties", edgecolor=PAPER, linewidth=0.8):
+    for shapes, here in draw_shapes(axes, land, has, "counties", edgecolor=RULE, linewidth=0.7):
         shapes.set_cmap(colours.palette)
         shapes.set_norm(colours.steps)
         shapes.set_array(panel.values[here])
@@ -212,10 +217,10 @@ def _draw_panel(
 
 def _draw_ends(
     figure: Figure, place: Box, land: Land, ends: Sequence[Panel], shown: Shown, unranked: np.ndarray, size: Size,
-    scale: tuple[float, float] | None,
+    system: System, scale: tuple[float, float] | None,
 ) -> None:  # fmt: skip
     """The two ends of the range as small maps over a scale of their own, which reaches further."""
-    colours = scale_of([panel.values for panel in ends], shown, scale)
+    colours = scale_of([panel.values for panel in ends], shown, system, scale)
     head, bar = 1.9 * size.text_pt / 72.0, 0.55 if size.is_slide else 0.36
     wide = 0.5 * place.width
     tall = min(place.height - head - bar, 0.96 * wide * land.shape)
@@ -239,10 +244,10 @@ def _write_values(
     points = min(size.text_pt, 0.27 * 72.0 * float(np.median(room)))
     if points < 0.6 * size.text_pt:
         return
-    line = 1.2 * points / 72.0 / inch_per_degree / land.stretch
-    x, y = land.longitude_deg, land.latitude_deg + 0.3 * line
+    line = 1.1 * points / 72.0 / inch_per_degree / land.stretch
+    x, y = land.longitude_deg, land.latitude_deg + 0.05 * line
     y = y + _off_stations(x, y, *stations_of(results, land), line, line * land.stretch)
-    small = 0.72 * points
+    small = 0.68 * points
     for number in np.flatnonzero(np.isfinite(x) & np.isfinite(y)):
         has = bool(np.isfinite(values[number]))
         ground = colours.colour(values[number]) if has else PAPER
@@ -263,7 +268,7 @@ def _off_stations(
         return np.zeros(len(x))
     above = station_y - y[:, None]
     over = (np.abs(station_x - x[:, None]) < 2.0 * wide) & (above > -0.8 * line) & (above < 1.7 * line)
-    up, down = above + 0.85 * line, above - 1.75 * line
+    up, down = above + 0.8 * line, above - 1.6 * line
     move = np.where(up <= -down, up, down)
     first = over.argmax(axis=1)
     return np.where(over.any(axis=1), move[np.arange(len(x)), first], 0.0)
@@ -336,12 +341,14 @@ def _draw_wind(axes: Axes, results: Results, land: Land, days: np.ndarray, size:
     return True
 
 
-def _subtitle(results: Results, shown: Shown, days: np.ndarray) -> str:
+def _subtitle(results: Results, shown: Shown, days: np.ndarray, cover: str | None) -> str:
     """The run's title, what the days make, what is averaged, the hour."""
     parts = [style.plain(results.settings.get("title"))]
     if len(days) > 1:
         parts.append(f"{shown.over_days} of {len(days)} days")
-    if shown.source == "stand":
+    if shown.name in BY_SOURCE and cover is None:
+        parts.append("over each source's own ground" if shown.source == "stand" else "spread over the whole county")
+    elif shown.source == "stand":
         parts.append("area mean over the stands")
     if shown.hour:
         hour = float(results.settings.get("contribution_hour", 15.0))

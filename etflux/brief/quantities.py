@@ -72,7 +72,9 @@ class Shown:
         return quantity(self.name).decimals_in(system)
 
 
-_MAPS: tuple[tuple[str, str, str, str, bool], ...] = (  # name, source, over days, palette, ranked
+Source = Literal["county", "stand", "tag", ""]
+OverDays = Literal["sum", "mean", ""]
+_MAPS: tuple[tuple[str, Source, OverDays, str, bool], ...] = (  # name, source, over days, palette, ranked
     ("contribution_c", "county", "mean", "dew", True),
     ("contribution_same_day_c", "county", "mean", "dew", True),
     ("contribution_carried_c", "county", "mean", "dew", True),
@@ -111,6 +113,7 @@ _MAPS: tuple[tuple[str, str, str, str, bool], ...] = (  # name, source, over day
     ("represented_pct", "county", "mean", "air", False),
     ("estimated_share_pct", "county", "mean", "air", False),
 )
+_LABELS = {"ks": "Stress coefficient, 1 = no stress"}
 _FIGURES = (
     Shown("season", "A stand's season", "season"),
     Shown("episode", "What the crops added to the dew point, day by day", "episode", ranked=True),
@@ -121,7 +124,7 @@ _FIGURES = (
 
 QUANTITIES: Mapping[str, Shown] = {
     **{
-        name: Shown(name, quantity(name).label, "map", source, over, palette, ranked, dark_low=name == "ks")  # type: ignore[arg-type]
+        name: Shown(name, _LABELS.get(name, quantity(name).label), "map", source, over, palette, ranked, name == "ks")
         for name, source, over, palette, ranked in _MAPS
     },
     **{shown.name: shown for shown in _FIGURES},

@@ -82,7 +82,8 @@ def stand_season(
         _notes(unit),
     )  # fmt: skip
     axis = 0.085 * box.width if size.is_slide else 0.11 * box.width
-    inner = Box(box.left + axis, box.bottom + 0.05 * box.height, 0.87 * box.width - axis, 0.9 * box.height)
+    right = (0.87 if size.is_slide else 0.83) * box.width
+    inner = Box(box.left + axis, box.bottom + 0.05 * box.height, right - axis, 0.9 * box.height)
     top, middle, low = (inner.part(0.0, *part) for part in ((0.70, 1.0, 0.29), (0.265, 1.0, 0.40), (0.0, 1.0, 0.225)))
     first = top.axes(figure)
     axes = [first, middle.axes(figure, sharex=first), low.axes(figure, sharex=first)]
@@ -177,7 +178,7 @@ def _draw_water(axes: Axes, unit: xr.Dataset, x: np.ndarray, size: Size, system:
         x, begins, color=INK, linestyle=(0, (4, 2)), linewidth=0.9 * size.line_pt, gid="stress begins",
         label="stress begins",
     )  # fmt: skip
-    top = float(np.nanmax(people(taw), initial=0.0))
+    top = style.greatest(people(taw))
     axes.set_ylim(0.0, 1.08 * top if top > 0.0 else 1.0)
     _key(axes, size, [area, *full, *dashed])
 
@@ -192,7 +193,7 @@ def _draw_coming(axes: Axes, unit: xr.Dataset, x: np.ndarray, size: Size, system
         bars = axes.bar(x, given, TOOTH, bottom=np.nan_to_num(rain), color=style.GIVEN, gid="irrigation",
                         label="irrigation")  # fmt: skip
         handles.append(bars)
-    top = float(np.nanmax(rain + given, initial=0.0))
+    top = style.greatest(np.nan_to_num(rain) + np.nan_to_num(given))
     axes.set_ylim(0.0, 1.15 * top if top > 0.0 else 1.0)
     _key(axes, size, handles)
 

@@ -183,6 +183,18 @@ def wrapped(text: str, points: float, room_in: float, lines: int, bold: bool = F
     return "\n".join(done + rest)
 
 
+def greatest(values: Any, least: float = 0.0) -> float:
+    """The greatest finite value, or `least` if that is more or there is none.
+
+    Examples
+    --------
+    >>> greatest([1.0, float("nan")]), greatest([float("nan")], 2.0)
+    (1.0, 2.0)
+    """
+    numbers = np.asarray(values, float)
+    return float(np.max(numbers[np.isfinite(numbers)], initial=least))
+
+
 def sentence(text: str) -> str:
     """The text with a capital at its beginning.
 

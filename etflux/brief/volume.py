@@ -103,6 +103,7 @@ def _draw_bars(
                          linewidth=0.8, label=style.plain(name), gid=f"volume {name}")  # fmt: skip
         handles += [bars] if name and wide.max(initial=0.0) > 0.002 * max(start.max(initial=0.0), 1e-9) else []
         start = start + wide
+    axes.set_xlim(0.0, 1.03 * float(start.max(initial=0.0)) or 1.0)
     axes.set_ylim(len(shown) - 0.4, -0.6)
     style.dress(axes, size, row.heading(system), grid="x")
     axes.xaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{value:,.6g}"))
