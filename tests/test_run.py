@@ -20,7 +20,7 @@ from etflux.results.rests import rests_on
 from etflux.results.summary import CONFIDENCE, confidence
 from etflux.run import run_case
 from etflux.workbook.report import write_report
-from etflux.workbook.report_words import WORLD_SENTENCES
+from etflux.workbook.report_words import WORLD_SENTENCES, paragraph
 
 EXAMPLES = Path(__file__).parents[1] / "station_examples"
 BASIN, COUNTY = EXAMPLES / "harrowbend.xlsx", EXAMPLES / "tallgrove_us.xlsx"
@@ -399,3 +399,16 @@ def test_with_a_station_and_the_balloon_missing_the_brief_names_what_stands_in(b
 
 def with_end(case: Case, last: pd.Timestamp) -> Case:
     return Case(with_settings(case.settings, season_end=str(last.date())), case.tables, case.source)
+
+
+def test_convective_energy_is_told_in_two_sentences_where_it_was_asked_for(basin):
+    pytest.importorskip("metpy")
+    last = pd.Timestamp("2031-07-27")
+    case = with_end(without_extras(basin), last)
+    asked = with_settings(case.settings, season_start="2031-07-15", air_cape=True, cape_days=1)
+    results = run_case(Case(asked, case.tables, case.source))
+    text = paragraph(results, results.summary(str(last.date())), "si")
+    assert text.count("J/kg") >= 2
+    assert "CAPE" in text or "convective" in text
+    quiet = run_case(Case(with_settings(asked, air_cape=False), case.tables, case.source))
+    assert "J/kg" not in paragraph(quiet, quiet.summary(str(last.date())), "si")

@@ -191,11 +191,23 @@ def _air_sentences(results: Results, numbers: dict[str, Any], system: System) ->
             f"Of {results.settings['air_draws']} random draws eight in ten lie between "
             f"{rise(numbers['contribution_p10_c'])} and {rise(numbers['contribution_p90_c'])}. {BAND_NOTE}"
         )
+    sentences += _convective_sentences(results, numbers)
     sure = numbers["marked"]["confidence"]
     parts = [f"{count} {word}" for word, count in sure.items() if count]
     if parts:
         sentences.append(f"How sure, by county: {', '.join(parts)}.")
     return sentences
+
+
+def _convective_sentences(results: Results, numbers: dict[str, Any]) -> list[str]:
+    """Two sentences on convective energy, where the run computed it for the day."""
+    county = results.county.sel(date=np.datetime64(numbers["day"]))
+    names = [name for name in county.data_vars if str(name).endswith("_j_kg")]
+    if not names or not np.isfinite(county[names[0]].to_numpy()).any():
+        return []
+    from etflux import convection
+
+    return list(convection.sentences(convection.summary({str(name): county[name].to_numpy() for name in names})))
 
 
 def _stand_sentences(numbers: dict[str, Any]) -> list[str]:
