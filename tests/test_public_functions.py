@@ -22,6 +22,7 @@ import xarray as xr
 import etflux
 from etflux import column, counties, crops, humidity, marks, reference, solar
 from etflux.soilwater import equations
+from etflux.stands import texture
 
 
 @dataclass(frozen=True)
@@ -144,6 +145,18 @@ ROWS = [
     row(equations.bare_share, residue_share=0.3),
     row(equations.exposed_wetted_fraction, ground_cover=0.4, fw=0.8, drip_shade=0.2, bare_share=0.9),
     row(equations.evaporation_coefficient, kr=0.5, kcb=0.6, kc_max=1.2, few=0.5, bare_share=0.9),
+    row(
+        equations.surface_uptake,
+        transpiration_mm=5.0,
+        de_mm=10.0,
+        tew_mm=20.0,
+        depletion_mm=60.0,
+        taw_mm=120.0,
+        evaporation_depth_m=0.1,
+        root_depth_m=0.6,
+        layer_available_mm=15.0,
+    ),
+    row(texture.water_retention, sand_pct=20.0, clay_pct=15.0, organic_matter_pct=2.5),
     row(equations.total_available_water, theta_fc=0.32, theta_wp=0.15, root_depth_m=1.0),
     row(equations.depletion_fraction, p_table=0.55, etc_mm=6.0),
     row(equations.stress_coefficient, depletion_mm=90.0, taw_mm=150.0, raw_mm=80.0),

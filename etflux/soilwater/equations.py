@@ -11,6 +11,8 @@ References
 .. [3] Hawkins, R.H., Hjelmfelt, A.T., Zevenbergen, A.W. (1985), Runoff probability, storm depth, and curve numbers,
    J. Irrig. Drain. Eng. 111(4): curve numbers I and III from II. From memory.
 .. [4] ASCE Manual 70, 2nd ed. (2016): curve number from the depletion of the drying layer. From memory.
+.. [5] Allen, R.G., Pereira, L.S., Smith, M., Raes, D., Wright, J.L. (2005), FAO-56 dual crop coefficient method for
+   estimating evaporation from soil and application extensions, J. Irrig. Drain. Eng. 131(1): 2-13.
 """
 
 from __future__ import annotations
@@ -241,6 +243,48 @@ def evaporation_coefficient(
     kc_top = np.asarray(kc_max, float)
     wanted = np.asarray(kr, float) * (kc_top - np.asarray(kcb, float)) * np.asarray(bare_share, float)
     return np.minimum(wanted, np.asarray(few, float) * kc_top)
+
+
+def surface_uptake(
+    transpiration_mm: ArrayLike, de_mm: ArrayLike, tew_mm: ArrayLike, depletion_mm: ArrayLike, taw_mm: ArrayLike,
+    evaporation_depth_m: ArrayLike, root_depth_m: ArrayLike, layer_available_mm: ArrayLike,
+) -> np.ndarray:  # fmt: skip
+    """What of the day's transpiration the roots take from the drying layer, Tew of eq. 77.
+
+    FAO-56 (p. 153) lets it be neglected; Allen et al. (2005) [5]_ give its share of the transpiration as
+    (1 - De/TEW)/(1 - Dr/TAW) (Ze/Zr)^0.6, from 0 to 1 (from memory). Plants dry the layer to wilting point only.
+
+    Parameters
+    ----------
+    transpiration_mm : array_like
+        Of the day. [mm]
+    de_mm, tew_mm : array_like
+        Depletion of the drying layer after the day's evaporation, and what it holds. [mm]
+    depletion_mm, taw_mm : array_like
+        Depletion of the root zone after the day's evaporation, and what it holds. [mm]
+    evaporation_depth_m, root_depth_m : array_like
+        Ze and Zr. [m]
+    layer_available_mm : array_like
+        Water of the layer above wilting point. [mm]
+
+    Returns
+    -------
+    ndarray
+        [mm]
+
+    Examples
+    --------
+    Half of both stores used, roots six times as deep as the layer, 5 mm of transpiration:
+
+    >>> surface_uptake(5.0, 10.0, 20.0, 60.0, 120.0, 0.1, 0.6, 15.0).round(2).item()
+    1.71
+    """
+    wet = unit_interval(1.0 - np.asarray(de_mm, float) / np.maximum(tew_mm, TINY))
+    left = np.maximum(1.0 - np.asarray(depletion_mm, float) / np.maximum(taw_mm, TINY), TINY)
+    depth = np.asarray(evaporation_depth_m, float) / np.maximum(root_depth_m, TINY)
+    share = unit_interval(wet / left * depth**0.6)
+    room = np.maximum(np.asarray(layer_available_mm, float) - np.asarray(de_mm, float), ZERO)
+    return np.minimum(share * np.asarray(transpiration_mm, float), room)
 
 
 def rewet_surface(

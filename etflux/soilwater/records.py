@@ -44,6 +44,8 @@ class Soil:
         Units that are water: Kcb ETo evaporates, brought by capillary_rise; rain runs off.
     melt_factor_mm : float
         Snow melt. [mm degC-1 d-1]
+    surface_uptake : bool
+        Whether roots also take water from the drying layer (the term Tew of FAO-56 eq. 77).
     """
 
     available_water_mm_m: np.ndarray
@@ -61,6 +63,7 @@ class Soil:
     p_table: np.ndarray
     open_water: np.ndarray
     melt_factor_mm: float = 4.0
+    surface_uptake: bool = False
 
     @cached_property
     def cn_dry(self) -> np.ndarray:

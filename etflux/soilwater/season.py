@@ -39,7 +39,7 @@ def soil_from_units(units: pd.DataFrame, settings: Settings) -> Soil:
         evaporation_depth_m, tew_mm, rew_mm, root_max_m, curve_number, residue_share, fw_method, is_drip, efficiency,
         water_regime, depletion_fraction, habit.
     settings : Settings
-        profile_depth_m and melt_factor_mm.
+        profile_depth_m, melt_factor_mm and surface_root_uptake.
 
     Returns
     -------
@@ -68,6 +68,7 @@ def soil_from_units(units: pd.DataFrame, settings: Settings) -> Soil:
         p_table=column("depletion_fraction"),
         open_water=(units["habit"] == "water").to_numpy(bool),
         melt_factor_mm=settings.melt_factor_mm,
+        surface_uptake=settings.surface_root_uptake,
     )
 
 

@@ -58,7 +58,7 @@ def day_step(state: State, soil: Soil, forcing: Forcing, rule: Rule | None = Non
     used = _evapotranspire(soil, forcing, top, dr, taw)
 
     # depletions at the day's end; what overfills the soil below the roots drains
-    de = top.de + used.evaporation / top.few  # eq. 77
+    de = _dried(soil, forcing, top, used, dr, taw)
     dr = dr + used.et
     ds, drainage = _fill(ds - percolation)
 
@@ -227,6 +227,17 @@ def _evapotranspire(soil: Soil, forcing: Forcing, top: _Top, dr: np.ndarray, taw
     ks = eq.stress_coefficient(_for_plants(dr, top.de, top.few, soil), taw, raw)
     transpiration = np.minimum(ks * kcb * eto, drawable - evaporation)
     return _Used(ke, ks, p, raw, evaporation, transpiration, evaporation + transpiration, et_potential)
+
+
+def _dried(soil: Soil, forcing: Forcing, top: _Top, used: _Used, dr: np.ndarray, taw: np.ndarray) -> np.ndarray:
+    """Depletion of the drying layer at the day's end, eq. 77; by evaporation, and by roots if they are asked for."""
+    de = top.de + used.evaporation / top.few
+    if not soil.surface_uptake:
+        return de
+    return de + eq.surface_uptake(
+        used.transpiration, de, soil.tew_mm, dr + used.evaporation, taw, soil.evaporation_depth_m,
+        forcing.root_depth_m, soil.layer_available_mm,
+    )  # fmt: skip
 
 
 def _for_plants(dr: np.ndarray, de: np.ndarray, few: np.ndarray, soil: Soil) -> np.ndarray:

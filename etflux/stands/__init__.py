@@ -6,6 +6,9 @@ here on the science takes plain arrays, one value per unit.
 
 from etflux.stands.problems import check
 from etflux.stands.tables import complete, packaged
+from etflux.stands.texture import class_available_water, water_retention
 from etflux.stands.units import SPREAD, expand
 
-__all__ = ["SPREAD", "check", "complete", "expand", "packaged"]
+__all__ = [
+    "SPREAD", "check", "class_available_water", "complete", "expand", "packaged", "water_retention",
+]  # fmt: skip

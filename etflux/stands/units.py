@@ -8,6 +8,7 @@ import numpy as np
 
 from etflux.soilwater.equations import total_evaporable_water
 from etflux.stands.tables import complete, packaged
+from etflux.stands.texture import class_available_water
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -207,6 +208,8 @@ def _ground(rows: pd.DataFrame, case: Case) -> pd.DataFrame:
     )
     surveyed = rows["available_water_mm_m"].notna()
     texture = 1000.0 * (rows["theta_fc"] - rows["theta_wp"])
+    if case.settings.texture_water == "saxton-rawls":
+        texture = texture.where(~_is_packaged(rows), class_available_water(rows["soil_id"]))
     rows["available_water_source"] = np.where(surveyed, "survey", "texture")
     rows["available_water_mm_m"] = rows["available_water_mm_m"].astype(float).where(surveyed, texture)
     group = rows["stand_group"].where(rows["stand_group"].notna(), rows["hydrologic_group"]).fillna(DEFAULT_GROUP)
@@ -218,6 +221,12 @@ def _ground(rows: pd.DataFrame, case: Case) -> pd.DataFrame:
         list(zip(rows["curve_number_class"], rows["hydrologic_letter"], strict=True))
     ).to_numpy()
     return rows
+
+
+def _is_packaged(rows: pd.DataFrame) -> np.ndarray:
+    """Whether the soil is the package's, not one of a person's own under its id: those keep their own numbers."""
+    ours = packaged("soils").set_index("soil_id")[["theta_fc", "theta_wp"]].reindex(rows["soil_id"])
+    return np.isclose(ours.to_numpy(float), rows[["theta_fc", "theta_wp"]].to_numpy(float)).all(axis=1)
 
 
 def _water(rows: pd.DataFrame, case: Case) -> pd.DataFrame:

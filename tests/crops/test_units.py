@@ -287,3 +287,19 @@ def test_many_counties_in_little_time(make):
     units = make.expand(case, make.record(days=3))
     assert len(units) == 3000 * 6
     assert time.perf_counter() - start < 10.0  # 0.5 s on the machine of the first run
+
+
+def test_available_water_by_texture_is_a_choice_for_the_packages_own_soils(make):
+    """Saxton and Rawls (2006) for the package's classes; a survey's number and a soil of one's own stay."""
+    own = {"soil_id": "loam", "theta_fc": 0.30, "theta_wp": 0.10, "rew_mm": 8.0}
+    rows = [
+        make.stand("A", soil_id="silt_loam", planting_date="2031-05-01"),
+        make.stand("B", soil_id="silt_loam", planting_date="2031-05-01", available_water_mm_m=170.0),
+        make.stand("C", soil_id="loam", planting_date="2031-05-01"),
+    ]
+    found = {}
+    for choice in ("fao56", "saxton-rawls"):
+        units = make.expand(make.case(*rows, settings={"texture_water": choice}, soils=[own]))
+        found[choice] = units[units["kind"] == "stand"].set_index("stand_id")["available_water_mm_m"].to_dict()
+    assert found["fao56"] == pytest.approx({"A": 140.0, "B": 170.0, "C": 200.0})
+    assert found["saxton-rawls"] == pytest.approx({"A": 195.4, "B": 170.0, "C": 200.0}, abs=0.1)

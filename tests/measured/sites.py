@@ -27,10 +27,12 @@ BO1 = SimpleNamespace(latitude=40.0062, longitude=-88.2904, elevation=219.0, win
 AR1 = SimpleNamespace(latitude=36.4267, longitude=-99.4200, elevation=611.0, wind_height=3.0)
 AZMET_WIND_M = 3.0
 
-# US-Ne1 management record: main sowing day of each year; the last tillage before it. "Stripe till" and "Other" disturb
-# part of the ground and are called reduced, no entry since the last sowing no-till.
+# US-Ne1: main sowing day of each year (management record). Tillage: "since initiation of the study in 2001, all sites
+# have been under no-till" (University of Nebraska, Carbon Sequestration Program, description of the study sites), until
+# the record has a conventional tillage again, on 26 October 2005. Its entries "Other" name no implement.
 SOWN = {2002: "2002-05-10", 2003: "2003-05-15", 2004: "2004-05-04", 2005: "2005-05-05", 2006: "2006-05-05"}
-TILLED = {2002: "reduced", 2003: "reduced", 2004: "reduced", 2005: "no-till", 2006: "conventional"}
+TILLED = {2002: "no-till", 2003: "no-till", 2004: "no-till", 2005: "no-till", 2006: "conventional"}
+ROTATION_DAYS = 4  # the record: a turn of the centre pivot takes 87 to 93 hours
 HARVESTED = {2002: "2002-11-04", 2003: None, 2004: "2004-10-14", 2005: "2005-10-12", 2006: "2006-10-04"}
 # US-Bo1, 1998: the sowing day is not on record. Middle of the usual period of central Illinois (common practice, no
 # source): 20 May.
@@ -121,14 +123,75 @@ def case(place, weather, stands, settings=None, **tables) -> Case:
     return Case(with_settings(Settings(), **{**DEPTHS_AND_AIR, **(settings or {})}), found)
 
 
-def ne1(year: int, settings=None, tables=None, residue=True, **stand) -> Case:
-    """Irrigated maize of one year; its rain column holds the irrigation, so none is entered."""
+@cache
+def ne1_canopy(what: str) -> pd.Series:
+    """Measured canopy of US-Ne1 by day: LAI_TOT_m2m2 or HEIGHTC_m."""
+    rows = table("us_ne1_lai_height_soil.csv")
+    rows = rows[rows["variable"] == what]
+    values = pd.Series(rows["value"].astype(float).to_numpy(), pd.to_datetime(rows["date"].astype(int).astype(str)))
+    return values.sort_index()
+
+
+def leaf_area(year: int, stand_id: str) -> pd.DataFrame:
+    """Observations of leaf area of one year of US-Ne1."""
+    area = ne1_canopy("LAI_TOT_m2m2")
+    area = area[area.index.year == year]
+    return pd.DataFrame(
+        {"stand_id": stand_id, "date": area.index, "observed": "leaf area", "observed_value": area.to_numpy()}
+    )
+
+
+def wind_over_grass(wind_m_s, height_m, crop_m, blend_m=45.0):
+    """Wind that grass would have at the same height, from wind measured over a crop.
+
+    Through a height at which the air no longer feels the ground (45 m), both profiles logarithmic with displacement
+    2/3 h and roughness 0.123 h: ASCE-EWRI (2005) app. B, after Allen and Wright (1997), J. Hydrol. Eng. 2:26-35 (from
+    memory).
+    """
+
+    def carried(z, h):
+        return np.log((z - 2.0 / 3.0 * h) / (0.123 * h))
+
+    grass = 0.12
+    crop = np.maximum(crop_m, grass)
+    aloft = wind_m_s * carried(blend_m, crop) / carried(height_m, crop)
+    return aloft * carried(height_m, grass) / carried(blend_m, grass)
+
+
+@cache
+def ne1_irrigation(year: int) -> pd.Series:
+    """Depth of each irrigation of US-Ne1, by day, found in the site's own gauge. [mm]
+
+    The rain column holds the irrigation too. The management record has the days on which a turn of the pivot began; the
+    gauge gets its share on one of the days of that turn: that with the most water. More than the year's middle depth is
+    rain that fell on the same day.
+    """
+    rain = fluxnet("us_ne1_daily_2001-2006.csv")["P_F"].loc[str(year)]
+    record = table("us_ne1_management.csv")
+    begun = pd.to_datetime(record.loc[record["group"] == "WATER", "date"].astype(str))
+    days = []
+    for day in begun[begun.dt.year == year]:
+        turn = rain.loc[day : day + pd.Timedelta(days=ROTATION_DAYS - 1)].drop(days, errors="ignore")
+        days.append(turn.idxmax())
+    depth = rain.loc[days]
+    return depth.clip(upper=depth.median()).loc[lambda found: found > 0.0].sort_index()
+
+
+def ne1(year: int, settings=None, tables=None, residue=True, split=True, **stand) -> Case:
+    """Irrigated maize of one year; what of the rain column is irrigation is entered as such, or left as rain."""
     days = fluxnet("us_ne1_daily_2001-2006.csv").loc[str(year)]
     row = {
         "stand_id": f"maize{year}", "cover_id": "corn", "soil_id": "silty_clay_loam", "water_regime": "sprinkler",
         "planting_date": SOWN[year], "hybrid_heat_units": 1500.0, "tillage": TILLED[year] if residue else None, **stand,
     }  # fmt: skip
-    return case(NE1, fluxnet_weather(days, NE1), [row], settings, **(tables or {}))
+    weather, tables = fluxnet_weather(days, NE1), dict(tables or {})
+    if split:
+        depth = ne1_irrigation(year)
+        weather["rain_mm"] = (days["P_F"] - depth.reindex(days.index, fill_value=0.0)).to_numpy()
+        tables["irrigation_events"] = pd.DataFrame(
+            {"stand_id": row["stand_id"], "date": depth.index, "depth_net_mm": depth.to_numpy()}
+        )
+    return case(NE1, weather, [row], settings, **tables)
 
 
 def bo1(settings=None, tables=None, residue=True, mean_only=False, **stand) -> Case:

@@ -27,6 +27,7 @@ class Ground:
     fw_method: float
     drip: bool
     profile_depth: float
+    uptake: bool = False
 
 
 @dataclass
@@ -242,6 +243,11 @@ def one_day(g: Ground, store: Store, w: Weather) -> tuple[Store, dict[str, float
     d = for_plants(g, dr_start, de_start, few)
     ks = 1.0 if d <= raw or w.kcb <= 0.0 else min(max((taw - d) / (taw - raw), 0.0), 1.0)
     t = min(ks * w.kcb * w.eto, max(0.0, dr_limit - dr_start - e))
+
+    if g.uptake:  # Tew of eq. 77, share of Allen et al. (2005); down to wilting point
+        wet = max(1.0 - s.de / limit, 0.0)
+        share = wet / max(1.0 - (dr_start + e) / taw, 1e-9) * (g.ze / s.zr) ** 0.6
+        s.de += min(min(share, 1.0) * t, max(g.available_mm_m * g.ze - s.de, 0.0))
 
     s.dr = dr_start + e + t
     s.ds -= percolation

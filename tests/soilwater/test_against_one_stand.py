@@ -83,6 +83,7 @@ def _ground(soil, unit):
         fw_method=float(soil.wetted_fraction[unit]),
         drip=bool(soil.is_drip[unit]),
         profile_depth=float(soil.profile_depth_m[unit]),
+        uptake=soil.surface_uptake,
     )
 
 
@@ -148,8 +149,8 @@ def _march(unit, soil, forcing, start, table, dated):
     return rows
 
 
-@pytest.fixture(scope="module")
-def inputs(make):
+@pytest.fixture(scope="module", params=[False, True], ids=["", "roots in the drying layer"])
+def inputs(make, request):
     soil, forcing, start, rule, events = make.random(20310727, n=STANDS, days=DAYS)
     rng = np.random.default_rng(20310728)
     forcing, rule, table = _harder(soil, forcing, rule, rng)
@@ -163,7 +164,7 @@ def inputs(make):
         np.concatenate([early, events.unit]),
         np.concatenate([np.full(len(early), 12.0), events.gross_mm]),
     )
-    return soil, forcing, start, rule, events, table
+    return replace(soil, surface_uptake=request.param), forcing, start, rule, events, table
 
 
 @pytest.fixture(scope="module")

@@ -262,12 +262,31 @@ def test_soil_from_units():
         "residue_share": 0.3, "fw_method": [1.0, 0.35], "is_drip": [False, True], "efficiency": 0.8,
         "water_regime": ["sprinkler", "drip"], "depletion_fraction": 0.55, "habit": ["annual", "water"],
     })  # fmt: skip
-    soil = soil_from_units(units, SimpleNamespace(profile_depth_m=2.0, melt_factor_mm=3.0))
+    soil = soil_from_units(units, SimpleNamespace(profile_depth_m=2.0, melt_factor_mm=3.0, surface_root_uptake=True))
     assert soil.available_water_mm_m == pytest.approx([140.0, 200.0])  # the survey's wins
     assert soil.profile_depth_m == pytest.approx([2.0, 2.4])  # never above the roots' end
     assert soil.loss_to_air.tolist() == [True, False]
     assert soil.open_water.tolist() == [False, True]
     assert soil.melt_factor_mm == 3.0
+    assert soil.surface_uptake
+
+
+@pytest.mark.parametrize("seed", range(3))
+def test_roots_in_the_drying_layer_leave_less_to_evaporate_and_close_the_balance(make, seed):
+    """Tew of FAO-56 eq. 77: young plants with shallow roots; without plants nothing changes."""
+    weather = ordinary_weather(90, seed)
+    found = {}
+    for kcb in (0.0, 0.7):
+        forcing = make.forcing(90, kcb=kcb, ground_cover=0.4 if kcb else 0.0, root_depth_m=0.4, **weather)
+        for uptake in (False, True):
+            soil = replace(make.soil(1), surface_uptake=uptake)
+            start = make.start(soil, forcing)
+            daily, end = season(soil, forcing, start)
+            assert np.abs(closure(daily, start, end)).max() < 1e-9
+            assert (daily["de_mm"] <= soil.tew_mm + 1e-9).all()
+            found[kcb, uptake] = daily["evaporation_mm"].sum()
+    assert found[0.0, True] == found[0.0, False]
+    assert 0.6 * found[0.7, False] < found[0.7, True] < 0.97 * found[0.7, False]
 
 
 def test_soil_problems_are_found():
