@@ -50,6 +50,9 @@ def air_by_height(
     subtitle += "dashed: without the crops' water" + _world_words(here)
     title = f"The air over {name}, {style.days_words(np.array([day]))}"
     box = style.frame(figure, size, results, title, subtitle, _notes(here, morning, hours))
+    if not len(morning) and not len(hours):
+        style.say_nothing_there(figure, box, size, "The run keeps no air by height of this day.")
+        return figure
     axes = _two_axes(figure, box, size)
     top = _top(morning, hours, here)
     _draw_theta(axes[0], morning, hours, here, size, system)

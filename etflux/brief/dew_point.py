@@ -77,8 +77,11 @@ def dew_point_check(
              "excess near the ground."]  # fmt: skip
     box = style.frame(
         figure, size, results, f"Dew point, estimated and observed, {style.days_words(days)}",
-        style.sentence(f"{where}; {_error_words(found, system)}"), notes,
+        style.sentence(f"{where}{_error_words(found, system)}"), notes,
     )  # fmt: skip
+    if not len(found):
+        style.say_nothing_there(figure, box, size, "No afternoon dew point was observed on these days.")
+        return figure
     under, left = 3.3 * size.text_pt / 72.0, 0.075 * box.width if size.is_slide else 0.1 * box.width
     if size.is_slide:
         side = min(box.height - under, 0.44 * box.width)
@@ -103,7 +106,7 @@ def _draw_square(
     style.dress(axes, size, f"Observed ({unit})", f"Estimated ({unit})", grid="both")
     x, y = (from_si(found[name], "dew_point_c", system) for name in ("observed_c", "estimated_c"))
     every = np.array([*x, *y])
-    low, high = (float(every.min()), float(every.max())) if len(every) else (0.0, 1.0)
+    low, high = float(every.min()), float(every.max())
     room = 0.04 * max(high - low, 1.0)
     low, high = low - room, high + room
     handles = axes.plot([low, high], [low, high], color=SOFT, linewidth=0.7 * size.line_pt, gid="equal", label="equal")
@@ -149,8 +152,8 @@ def _points(
 def _error_words(found: pd.DataFrame, system: System) -> str:
     """How many, mean error, and how far half of them are off."""
     if not len(found):
-        return "no afternoon was observed"
+        return ""
     error = from_si(found["estimated_c"] - found["observed_c"], "estimate_error_c", system)
     unit = quantity("estimate_error_c").unit_in(system)
     half = float(np.median(np.abs(error)))
-    return f"{len(found)} county-days, mean error {error.mean():+.1f} {unit}, half within {half:.1f} {unit}"
+    return f"; {len(found)} county-days, mean error {error.mean():+.1f} {unit}, half within {half:.1f} {unit}"

@@ -6,13 +6,14 @@ import contextlib
 import os
 import tempfile
 from collections.abc import Callable, Mapping
+from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from etflux.brief.quantities import QUANTITIES, Shown, days_of, shown_of
-from etflux.brief.style import SIZES, Size
+from etflux.brief.style import SIZES
 from etflux.findings import CannotWrite, Finding, ProblemsFound
 from etflux.variables import System
 
@@ -74,28 +75,28 @@ def draw(
         For another size or unit system.
     """
     shown = shown_of(show)
-    if size not in SIZES:
-        raise ValueError(f"size {size!r} is none of {', '.join(SIZES)}")
     system = units or ("us" if results.settings.get("units") == "us" else "si")
-    if system not in ("si", "us"):
-        raise ValueError(f"units {system!r} are none of si, us")
+    if size not in SIZES or system not in ("si", "us"):
+        raise ValueError(f"size {size!r} and units {system!r}: must be of {', '.join(SIZES)} and of si, us")
     if cover is not None and not shown.by_cover:
         names = [name for name, row in QUANTITIES.items() if row.by_cover]
         raise ProblemsFound([Finding("not-by-cover", "show", value=show, detail=", ".join(names))])
-    asked = _Asked(days_of(results, on, until), until is not None, county, stand, cover, scale, system, SIZES[size])
+    look = {"system": system, "size": SIZES[size]}
+    asked = _Asked(days_of(results, on, until), until is not None, county, stand, cover, scale, look)
     return FIGURES[shown.figure](results, shown, asked)
 
 
+@dataclass(frozen=True)
 class _Asked:
-    """What was asked for besides the quantity."""
+    """What was asked for besides the quantity; `span` says whether a last day was named."""
 
-    def __init__(
-        self, days: np.ndarray, span: bool, county: str | None, stand: str | None, cover: str | None,
-        scale: tuple[float, float] | None, system: System, size: Size,
-    ) -> None:  # fmt: skip
-        self.days, self.span, self.county, self.stand, self.cover = days, span, county, stand, cover
-        self.scale = scale
-        self.look: dict[str, Any] = {"system": system, "size": size}
+    days: np.ndarray
+    span: bool
+    county: str | None
+    stand: str | None
+    cover: str | None
+    scale: tuple[float, float] | None
+    look: dict[str, Any]
 
 
 def _map(results: Results, shown: Shown, asked: _Asked) -> Figure:

@@ -10,7 +10,8 @@ from typing import TYPE_CHECKING, Any, Literal
 import numpy as np
 
 from etflux.brief import style
-from etflux.brief.style import SOFT, Size
+from etflux.brief.quantities import county_names
+from etflux.brief.style import RULE, SOFT, Box, Size
 from etflux.outlines import EARTH_RADIUS_KM
 from etflux.variables import System, convert
 
@@ -80,6 +81,17 @@ class Land:
             for path, radius in zip(self.paths, self.dot_radius_deg, strict=True)
         ])  # fmt: skip
 
+    def inch_per_degree(self, place: Box) -> float:
+        """Inches that a degree of longitude has on a map that fills a place."""
+        west, east, south, north = self.extent
+        wide, tall = max(east - west, 1e-6), max((north - south) * self.stretch, 1e-6)
+        return min(place.width / wide, place.height / tall)
+
+    def edge(self, place: Box) -> dict[str, Any]:
+        """Look of the borders: thinner on a map of many counties, none where they would hide the colours."""
+        points = 0.012 * 72.0 * float(np.median(self.width_deg)) * self.inch_per_degree(place)
+        return {"edgecolor": RULE if points > 0.05 else "face", "linewidth": min(max(points, 0.12), 0.7)}
+
     @cached_property
     def over_the_date_line(self) -> bool:
         """Whether western longitudes are counted on past 180."""
@@ -94,13 +106,12 @@ def land_of(results: Results) -> Land:
     longitude = county["longitude_deg"].to_numpy().astype(float)
     known = longitude[np.isfinite(longitude)]
     turn = bool(np.ptp(known) > 180.0) if len(known) else False
-    names = results.names_by_id("county")
     return Land(
         tuple(_path(outlines[name], turn) if name in outlines else None for name in ids),
         longitude % 360.0 if turn else longitude,
         county["latitude_deg"].to_numpy().astype(float),
         county["area_km2"].to_numpy().astype(float),
-        tuple(style.plain(names.get(name, name)) for name in ids),
+        tuple(style.plain(name) for name in county_names(results)),
     )
 
 

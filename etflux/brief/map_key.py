@@ -50,13 +50,11 @@ def scale_of(
         if not low < high:
             raise ValueError(f"the ends of a scale must rise: {ends}")
     digit = 10.0 ** -shown.decimals(system)
-    locator = MaxNLocator(nbins=STEPS, steps=[1, 2, 2.5, 5, 10])
-    edges = np.asarray(locator.tick_values(low, max(high, low + digit)), float)
+    high = max(high, low + 2.0 * digit)
+    edges = np.asarray(MaxNLocator(nbins=STEPS, steps=[1, 2, 2.5, 5, 10]).tick_values(low, high), float)
     if edges[1] - edges[0] < 0.999 * digit:
         edges = digit * np.arange(np.floor(low / digit + 1e-9), np.ceil(high / digit - 1e-9) + 1.0)
     palette = style.sequential(shown.palette, shown.dark_low)
-    if len(edges) < 3:
-        edges = edges[0] + (edges[-1] - edges[0]) * np.arange(3)
     return Scale(palette, BoundaryNorm(edges, palette.N, extend="neither" if ends is None else "both"))
 
 

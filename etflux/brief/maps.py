@@ -18,7 +18,7 @@ from etflux.brief.quantities import (
     represented_least_pct,
     sources_of,
 )
-from etflux.brief.style import GAPS_HATCH, INK, MISSING_HATCH, PAPER, RULE, SOFT, UNRANKED_HATCH, Box, Size
+from etflux.brief.style import GAPS_HATCH, INK, MISSING_HATCH, PAPER, SOFT, UNRANKED_HATCH, Box, Size
 from etflux.variables import System, from_si, quantity
 
 if TYPE_CHECKING:
@@ -87,7 +87,7 @@ def county_map(
     marks: set[str] = set()
     for place, panel in zip(main, panels, strict=True):
         axes = place.axes(figure)
-        marks |= _draw_panel(axes, land, panel, colours, unranked, size, "W" if len(panels) == 1 else "NW")
+        marks |= _draw_panel(axes, place, land, panel, colours, unranked, size, "W" if len(panels) == 1 else "NW")
         if len(panels) == 1:
             marks |= _draw_weather(axes, results, land, days, size)
             _write_values(axes, results, land, panel.values, place, size, colours, shown.decimals(system))
@@ -96,17 +96,22 @@ def county_map(
             one = np.arange(len(unranked)) == county_position(results, county)
             draw_shapes(axes, land, one, "pointed out", facecolor="none", edgecolor=INK, linewidth=1.4 * size.line_pt)
     under = draw_scale(figure, side, size, shown.heading(system), colours)
-    words = {
+    words = _key_words(results, shown, days, system)
+    draw_key(figure, side, under, size, {name: text for name, text in words.items() if name in marks})
+    if ends:
+        _draw_ends(figure, small, land, ends, shown, unranked, size, system, scale)
+    return figure
+
+
+def _key_words(results: Results, shown: Shown, days: np.ndarray, system: System) -> dict[str, str]:
+    """What each kind of hatching and mark means."""
+    return {
         "unranked": unranked_words(results),
         "gaps": "some days have no value: mean of the others",
         "missing": missing_words(results, shown, days),
         "stations": "weather station",
         "wind": _wind_words(results, days, system),
     }
-    draw_key(figure, side, under, size, {name: text for name, text in words.items() if name in marks})
-    if ends:
-        _draw_ends(figure, small, land, ends, shown, unranked, size, system, scale)
-    return figure
 
 
 def _page_height(land: Land, panels: int, ends: bool) -> float:
@@ -192,11 +197,18 @@ def unranked_counties(results: Results, shown: Shown, days: np.ndarray) -> np.nd
 
 
 def _draw_panel(
-    axes: Axes, land: Land, panel: Panel, colours: Scale, unranked: np.ndarray, size: Size, anchor: Literal["W", "NW"]
+    axes: Axes,
+    place: Box,
+    land: Land,
+    panel: Panel,
+    colours: Scale,
+    unranked: np.ndarray,
+    size: Size,
+    anchor: Literal["W", "NW"],
 ) -> set[str]:
     """Counties in colour; hatching over what has no value, is not ranked, or leaves days out. What was hatched."""
     has = np.isfinite(panel.values)
-    for shapes, here in draw_shapes(axes, land, has, "counties", edgecolor=RULE, linewidth=0.7):
+    for shapes, here in draw_shapes(axes, land, has, "counties", **land.edge(place)):
         shapes.set_cmap(colours.palette)
         shapes.set_norm(colours.steps)
         shapes.set_array(panel.values[here])
@@ -208,7 +220,8 @@ def _draw_panel(
     ):
         if here.any():
             marks.add(name)
-            draw_shapes(axes, land, here, name, facecolor=ground, edgecolor=SOFT, linewidth=0.6, hatch=hatch)
+            look = {"facecolor": ground, "edgecolor": SOFT, "linewidth": 0.8 * land.edge(place)["linewidth"]}
+            draw_shapes(axes, land, here, name, hatch=hatch, **look)
     set_extent(axes, land, anchor)
     if panel.name:
         axes.set_title(panel.name, fontsize=size.text_pt, color=INK, family=style.FAMILY, loc="left", pad=2.0)
@@ -225,8 +238,9 @@ def _draw_ends(
     wide = 0.5 * place.width
     tall = min(place.height - head - bar, 0.96 * wide * land.shape)
     for number, panel in enumerate(ends):
-        axes = Box(place.left + number * wide, place.bottom + bar, 0.96 * wide, tall).axes(figure)
-        _draw_panel(axes, land, panel, colours, unranked, size, "NW")
+        part = Box(place.left + number * wide, place.bottom + bar, 0.96 * wide, tall)
+        axes = part.axes(figure)
+        _draw_panel(axes, part, land, panel, colours, unranked, size, "NW")
     draw_scale(figure, Box(place.left, place.bottom, place.width, bar), size, "", colours)
 
 
@@ -236,10 +250,7 @@ def _write_values(
     """A county's name and value on it, where both can be read; moved off a station."""
     from matplotlib.patheffects import withStroke
 
-    west, east, south, north = land.extent
-    inch_per_degree = min(
-        place.width / max(east - west, 1e-6), place.height / max((north - south) * land.stretch, 1e-6)
-    )
+    inch_per_degree = land.inch_per_degree(place)
     room = land.width_deg * inch_per_degree
     points = min(size.text_pt, 0.27 * 72.0 * float(np.median(room)))
     if points < 0.6 * size.text_pt:

@@ -175,6 +175,13 @@ def county_position(results: Results, county: str) -> int:
     return ids.index(county)
 
 
+def county_names(results: Results) -> list[str]:
+    """Names of the counties for people, in the order of the run: theirs, the outline's, or the id."""
+    given, outlines = results.names_by_id("county"), getattr(results, "outlines", None) or {}
+    ids = results.county["county_id"].to_numpy().astype(str)
+    return [given.get(name) or (outlines[name].name if name in outlines else str(name)) for name in ids]
+
+
 def represented_least_pct(results: Results) -> float:
     """Share of a county under which its contribution is a range, and not ranked. [%]"""
     return float(results.settings.get("represented_least_pct", 70.0))

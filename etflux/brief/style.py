@@ -300,6 +300,17 @@ def source_colour(name: str, order: Sequence[str]) -> str:
     return SERIES[list(order).index(name) % len(SERIES)]
 
 
+def source_hatch(name: str) -> str | None:
+    """White stripes on the rest of the counties, which would look like a crop in grey."""
+    return "////" if name == "rest" else None
+
+
+def say_nothing_there(figure: Figure, box: Box, size: Size, words: str) -> None:
+    """Words in the middle of a figure that has nothing to show."""
+    write(figure, box.left + 0.5 * box.width, box.bottom + 0.5 * box.height, words, size.text_pt, ha="center",
+          va="center", color=SOFT, gid="nothing")  # fmt: skip
+
+
 def days_words(days: np.ndarray) -> str:
     """One day or a span of days in words.
 

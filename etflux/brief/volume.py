@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from etflux.brief import style
-from etflux.brief.quantities import county_position, county_values, provisional_note, shown_of, sources_of
+from etflux.brief.quantities import county_names, county_position, county_values, provisional_note, shown_of, sources_of
 from etflux.brief.style import INK, PAPER, Box, Size
 from etflux.variables import System
 
@@ -46,7 +46,8 @@ def counties_by_volume(
     figure = style.new_figure(size, 1.9 + 0.21 * max(len(shown), 8))
     whole = row.people(np.nansum(volume), system).item()
     subtitle = [style.plain(results.settings.get("title"))]
-    subtitle += [f"all {len(order)} counties gave {whole:,.{row.decimals(system)}f} {row.unit(system)}"]
+    decimals = 0 if whole >= 100.0 else row.decimals(system)  # a sum is not known better than its parts
+    subtitle += [f"all {len(order)} counties gave {whole:,.{decimals}f} {row.unit(system)}"]
     if len(shown) < len(order):
         share = 100.0 * volume[shown].sum() / volume[order].sum()
         subtitle += [f"the {len(shown)} largest are shown, {share:.0f} % of it"]
@@ -55,7 +56,8 @@ def counties_by_volume(
         "; ".join(part for part in subtitle if part), provisional_note(results, days),
     )  # fmt: skip
     ids = results.county["county_id"].to_numpy().astype(str)[shown]
-    names = [style.plain(results.name_of("county", name)) for name in ids]
+    every = county_names(results)
+    names = [style.plain(every[number]) for number in shown]
     points = min(size.text_pt, 0.74 * 72.0 * 0.9 * box.height / max(len(shown), 1))
     room = min(max([style.width_in(name, points) for name in names], default=0.0), 0.3 * box.width) + 0.1
     under = 3.2 * size.text_pt / 72.0
@@ -100,7 +102,8 @@ def _draw_bars(
         wide = row.people(values[shown], system)
         colour = style.source_colour(name, order) if name else style.HELD_EDGE
         bars = axes.barh(np.arange(len(shown)), wide, left=start, height=0.74, color=colour, edgecolor=PAPER,
-                         linewidth=0.8, label=style.plain(name), gid=f"volume {name}")  # fmt: skip
+                         linewidth=0.8, label=style.plain(name), gid=f"volume {name}",
+                         hatch=style.source_hatch(name))  # fmt: skip
         handles += [bars] if name and wide.max(initial=0.0) > 0.002 * max(start.max(initial=0.0), 1e-9) else []
         start = start + wide
     axes.set_xlim(0.0, 1.03 * float(start.max(initial=0.0)) or 1.0)
