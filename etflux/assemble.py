@@ -92,6 +92,7 @@ def station_daily(record: StationRecord, settings: Settings) -> xr.Dataset:
         coords={
             "date": _dates(record), "station_id": list(record.station_ids),
             "latitude_deg": ("station_id", record.latitude_deg), "longitude_deg": ("station_id", record.longitude_deg),
+            "elevation_m": ("station_id", record.elevation_m),
         },
     )  # fmt: skip
 

@@ -11,6 +11,8 @@ import csv
 import gzip
 import json
 import math
+import re
+from collections import Counter
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from functools import cache
@@ -23,9 +25,11 @@ import numpy as np
 from etflux.findings import CannotRead
 
 EARTH_RADIUS_KM = 6371.0088  # mean radius, IUGG
-ID_PROPERTIES = ("county_id", "GEOID", "geoid", "GEOID10", "GEOID20", "id", "ID")
+ID_PROPERTIES = ("county_id", "GEOID", "geoid", "GEOID10", "GEOID20", "GEO_ID", "AFFGEOID", "id", "ID")
+FIRST_CITY = "510"  # codes of independent cities begin here
 NAME_PROPERTIES = ("name", "NAME", "Name")
 LARGEST_FILE_BYTES = 60_000_000
+_LONG_GEOID = re.compile(r"\d{7}US(\d+)\Z")  # as the Census Bureau writes it in full: 0500000US19169
 
 Polygon = tuple[np.ndarray, ...]  # an outer ring, then its holes
 
@@ -52,13 +56,15 @@ class Border:
     normal: tuple[float, float]
 
 
-def read(path: Path) -> dict[str, Outline]:
+def read(path: Path, largest_bytes: int | None = LARGEST_FILE_BYTES) -> dict[str, Outline]:
     """Outlines of a file, by county id.
 
     Parameters
     ----------
     path : Path
-        GeoJSON (.geojson, .json), TopoJSON (.topojson, .json) or shapefile (.shp) in degrees.
+        GeoJSON (.geojson, .json), TopoJSON (.topojson, .json; its first layer) or shapefile (.shp) in degrees.
+    largest_bytes : int, optional
+        A larger file is refused; None for any.
 
     Raises
     ------
@@ -67,22 +73,28 @@ def read(path: Path) -> dict[str, Outline]:
     """
     try:
         size = path.stat().st_size
+        if largest_bytes is not None and size > largest_bytes:
+            raise CannotRead(f"{path.name}: {size / 1e6:.0f} MB is more than the {largest_bytes / 1e6:.0f} MB read.")
+        if path.suffix.lower() == ".shp":
+            return _from_features(_shapefile_features(path), path.name)
+        document = json.loads(path.read_text(encoding="utf-8-sig"))
     except OSError as error:
         raise CannotRead(f"{path.name}: cannot be opened ({error.strerror}). Put it beside the workbook.") from error
-    if size > LARGEST_FILE_BYTES:
-        raise CannotRead(f"{path.name}: {size / 1e6:.0f} MB is more than the {LARGEST_FILE_BYTES / 1e6:.0f} MB read.")
-    if path.suffix.lower() == ".shp":
-        return _from_features(_shapefile_features(path), path.name)
-    try:
-        document = json.loads(path.read_text(encoding="utf-8-sig"))
     except (UnicodeDecodeError, ValueError, RecursionError) as error:
         raise CannotRead(f"{path.name}: is not JSON. Save the outlines as GeoJSON or a shapefile.") from error
     kind = document.get("type") if isinstance(document, dict) else None
     if kind == "Topology":
-        return from_topojson(document, next(iter(document.get("objects", {})), ""))
+        return _checked(_from_topology(document, path.name), path.name)
     if kind != "FeatureCollection" or not isinstance(document.get("features"), list):
         raise CannotRead(f"{path.name}: is not a GeoJSON feature collection.")
     return _from_features(document["features"], path.name)
+
+
+def _from_topology(document: Mapping[str, Any], file_name: str) -> dict[str, Outline]:
+    try:
+        return from_topojson(document, next(iter(document["objects"])))
+    except (KeyError, IndexError, TypeError, ValueError, AttributeError, StopIteration, OverflowError) as error:
+        raise CannotRead(f"{file_name}: is broken TopoJSON. Save the outlines as GeoJSON or a shapefile.") from error
 
 
 def from_topojson(topology: Mapping[str, Any], layer: str) -> dict[str, Outline]:
@@ -91,7 +103,7 @@ def from_topojson(topology: Mapping[str, Any], layer: str) -> dict[str, Outline]
     shift = np.asarray(topology.get("transform", {}).get("translate", (0.0, 0.0)))
     quantized = "transform" in topology
     arcs = [
-        (np.cumsum(arc, axis=0) if quantized else np.asarray(arc, dtype=float)) * scale + shift
+        (np.cumsum(arc, axis=0) if quantized else np.asarray(arc, dtype=float))[:, :2] * scale + shift
         for arc in topology["arcs"]
     ]
 
@@ -99,7 +111,7 @@ def from_topojson(topology: Mapping[str, Any], layer: str) -> dict[str, Outline]
         parts = [arcs[i] if i >= 0 else arcs[~i][::-1] for i in indices]
         return np.concatenate([parts[0], *(part[1:] for part in parts[1:])])
 
-    found = {}
+    found: dict[str, Outline] = {}
     for geometry in topology["objects"][layer]["geometries"]:
         if geometry.get("type") == "Polygon":
             shapes = [geometry["arcs"]]
@@ -108,40 +120,74 @@ def from_topojson(topology: Mapping[str, Any], layer: str) -> dict[str, Outline]
         else:
             continue
         polygons = tuple(tuple(ring(indices) for indices in shape) for shape in shapes)
-        properties = geometry.get("properties") or {}
-        county_id = str(geometry.get("id", properties.get("id", "")))
-        found[county_id] = Outline(county_id, str(properties.get("name", county_id)), polygons)
+        county_id, name = _labels(geometry, id_first=True)
+        earlier = found.get(county_id)
+        found[county_id] = Outline(county_id, name, (earlier.polygons if earlier else ()) + polygons)
     return found
 
 
-def _from_features(features: Iterable[Mapping[str, Any]], file_name: str) -> dict[str, Outline]:
+def _labels(feature: Mapping[str, Any], id_first: bool = False) -> tuple[str, str]:
+    """Id ("" for none) and name of a feature; its own id before or after those among its properties."""
+    properties = feature.get("properties") or {}
+    among = [properties[key] for key in ID_PROPERTIES if properties.get(key) not in (None, "")]
+    own = [feature["id"]] if feature.get("id") not in (None, "") else []
+    ids = own + among if id_first else among + own
+    county_id = _text(ids[0]) if ids else ""
+    return county_id, next((str(properties[key]) for key in NAME_PROPERTIES if properties.get(key)), county_id)
+
+
+def _text(identity: Any) -> str:
+    """An id as text; whole numbers that a program keeps as 19169.0, and the Census Bureau's long form, made plain."""
+    if isinstance(identity, float) and identity.is_integer():
+        identity = int(identity)
+    text = str(identity).strip()
+    long = _LONG_GEOID.match(text)
+    return long[1] if long else text
+
+
+def _from_features(features: Iterable[Any], file_name: str) -> dict[str, Outline]:
     found: dict[str, Outline] = {}
     for number, feature in enumerate(features, start=1):
-        geometry = feature.get("geometry") or {}
-        shapes = {"Polygon": lambda g: [g["coordinates"]], "MultiPolygon": lambda g: g["coordinates"]}
-        if geometry.get("type") not in shapes:
+        try:
+            geometry = feature.get("geometry") or {}
+            kind, shapes = geometry.get("type"), geometry.get("coordinates", ())
+            county_id, name = _labels(feature)
+        except AttributeError as error:
+            raise CannotRead(f"{file_name}: outline {number} is not a GeoJSON feature.") from error
+        if kind not in ("Polygon", "MultiPolygon"):
             continue
-        properties = feature.get("properties") or {}
-        keys = [key for key in ID_PROPERTIES if properties.get(key) not in (None, "")]
-        county_id = str(properties[keys[0]] if keys else feature.get("id", ""))
         if not county_id:
             wanted = ", ".join(ID_PROPERTIES[:3])
             raise CannotRead(f"{file_name}: outline {number} has no id. Give it one of the properties {wanted}.")
-        name = next((str(properties[key]) for key in NAME_PROPERTIES if properties.get(key)), county_id)
         try:
             polygons = tuple(
-                tuple(np.asarray(ring, dtype=float)[:, :2] for ring in shape)
-                for shape in shapes[geometry["type"]](geometry)
+                tuple(_closed(np.asarray(ring, dtype=float)[:, :2]) for ring in shape)
+                for shape in ([shapes] if kind == "Polygon" else list(shapes))
             )
-        except (ValueError, TypeError, IndexError, KeyError) as error:
+        except (ValueError, TypeError, IndexError, OverflowError) as error:
             raise CannotRead(f"{file_name}: outline {county_id!r} has broken coordinates.") from error
-        for ring in (ring for polygon in polygons for ring in polygon):
-            if len(ring) < 4 or not np.isfinite(ring).all() or (np.abs(ring).max(axis=0) > (180.0, 90.0)).any():
-                raise CannotRead(f"{file_name}: outline {county_id!r} is not in degrees of longitude and latitude.")
         earlier = found.get(county_id)
         found[county_id] = Outline(county_id, name, (earlier.polygons if earlier else ()) + polygons)
-    if not found:
+    return _checked(found, file_name)
+
+
+def _closed(ring: np.ndarray) -> np.ndarray:
+    """A ring with its first vertex at the end, where a file leaves it out."""
+    return ring if (ring[0] == ring[-1]).all() else np.concatenate([ring, ring[:1]])
+
+
+def _checked(found: dict[str, Outline], file_name: str) -> dict[str, Outline]:
+    """Outlines whose rings enclose something and stand in degrees."""
+    if not any(outline.polygons for outline in found.values()):
         raise CannotRead(f"{file_name}: has no polygons.")
+    if "" in found:
+        raise CannotRead(f"{file_name}: an outline has no id. Give it one of {', '.join(ID_PROPERTIES[:3])}.")
+    for county_id, outline in found.items():
+        for ring in (ring for polygon in outline.polygons for ring in polygon):
+            if len(ring) < 4 or not np.isfinite(ring).all() or (np.abs(ring).max(axis=0) > (180.0, 90.0)).any():
+                raise CannotRead(f"{file_name}: outline {county_id!r} is not in degrees of longitude and latitude.")
+        if not any(len(polygon) for polygon in outline.polygons):
+            raise CannotRead(f"{file_name}: outline {county_id!r} has no polygon.")
     return found
 
 
@@ -186,14 +232,23 @@ class Alias:
 def us_counties() -> Mapping[str, Outline]:
     """Counties of the United States by GEOID: Census Bureau cartographic boundaries, 2017 edition, 1:5,000,000.
 
-    Names end in the state's, since many counties share one. Neighbours share the vertices of their border.
+    Names end in the state's postal code, since many counties share one; where a county and a city of one state do,
+    they say which they are. Neighbours share the vertices of their border.
+
+    Examples
+    --------
+    >>> us_counties()["19169"].name, us_counties()["24510"].name
+    ('Story, IA', 'Baltimore city, MD')
     """
     text = gzip.decompress(files("etflux.tables").joinpath("us_counties.topojson.gz").read_bytes())
-    states = {row["state_fips"]: row["name"] for row in _packaged_rows("us_states.csv")}
-    return {
-        geoid: Outline(geoid, f"{outline.name}, {states[geoid[:2]]}", outline.polygons)
-        for geoid, outline in from_topojson(json.loads(text), "counties").items()
-    }
+    postal = {row["state_fips"]: row["postal"] for row in _packaged_rows("us_states.csv")}
+    found = from_topojson(json.loads(text), "counties")
+    shared = Counter((geoid[:2], outline.name) for geoid, outline in found.items())
+    named = {}
+    for geoid, outline in found.items():
+        kind = "" if shared[geoid[:2], outline.name] == 1 else " city" if geoid[2:] >= FIRST_CITY else " County"
+        named[geoid] = Outline(geoid, f"{outline.name}{kind}, {postal[geoid[:2]]}", outline.polygons)
+    return named
 
 
 @cache

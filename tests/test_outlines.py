@@ -29,6 +29,13 @@ def _file(path, *features):
     return path
 
 
+def _topology(arcs, points=None, identity="a", kind="Polygon"):
+    """A topology of one geometry and one arc."""
+    geometry = {"type": kind, "arcs": arcs} | ({} if identity is None else {"id": identity})
+    layer = {"counties": {"type": "GeometryCollection", "geometries": [geometry]}}
+    return json.dumps({"type": "Topology", "objects": layer, "arcs": [points or _square(-95.0, 41.0)]})
+
+
 def test_area_of_a_band_is_the_spherical_formula(tmp_path):
     found = outlines.read(_file(tmp_path / "a.geojson", _feature("a", _square(-95.0, 41.0), name="Aldmoor")))["a"]
     area, latitude, longitude = area_and_centroid(found)
@@ -103,6 +110,39 @@ def test_shapefile_is_read(tmp_path):
         (json.dumps({"type": "FeatureCollection", "features": [_feature("", _square(0, 0))]}), "has no id"),
         (json.dumps({"type": "FeatureCollection", "features": [_feature("a", _square(500, 0))]}), "not in degrees"),
         (json.dumps({"type": "FeatureCollection", "features": [_feature("a", [["x", 1]])]}), "broken coordinates"),
+        (json.dumps({"type": "FeatureCollection", "features": [_feature("a", [[10**400, 1]] * 4)]}), "broken coord"),
+        (json.dumps({"type": "FeatureCollection", "features": [_feature("a", [])]}), "broken coordinates"),
+        (json.dumps({"type": "FeatureCollection", "features": [_feature("a")]}), "has no polygon"),
+        (json.dumps({"type": "FeatureCollection", "features": [7]}), "not a GeoJSON feature"),
+        (json.dumps({"type": "FeatureCollection", "features": [{"properties": [1], "geometry": None}]}), "not a GeoJ"),
+        (
+            json.dumps(
+                {
+                    "type": "FeatureCollection",
+                    "features": [{"properties": {"county_id": "a"}, "geometry": {"type": "Polygon"}}],
+                }
+            ),
+            "no polygon|broken coordinates",
+        ),
+        (
+            json.dumps(
+                {
+                    "type": "FeatureCollection",
+                    "features": [
+                        {"properties": {"county_id": "a"}, "geometry": {"type": "MultiPolygon", "coordinates": None}}
+                    ],
+                }
+            ),
+            "broken",
+        ),
+        (json.dumps({"type": "Topology"}), "broken TopoJSON"),
+        (json.dumps({"type": "Topology", "objects": {}, "arcs": []}), "broken TopoJSON"),
+        (json.dumps({"type": "Topology", "objects": [], "arcs": []}), "broken TopoJSON"),
+        (_topology(arcs=[[5]]), "broken TopoJSON"),
+        (_topology(arcs=[["x"]]), "broken TopoJSON"),
+        (_topology(arcs=[[0]], points=[[500.0, 0.0]] * 4), "not in degrees"),
+        (_topology(arcs=[[0]], identity=None), "no id"),
+        (_topology(arcs=[], kind="Point"), "has no polygons"),
     ],
 )
 def test_what_is_no_outline_is_said(text, message, tmp_path):
@@ -110,6 +150,39 @@ def test_what_is_no_outline_is_said(text, message, tmp_path):
     path.write_text(text)
     with pytest.raises(CannotRead, match=message):
         outlines.read(path)
+
+
+def test_topojson_ids_may_be_among_the_properties(tmp_path):
+    text = json.loads(_topology(arcs=[[0]], identity=None))
+    text["objects"]["counties"]["geometries"][0]["properties"] = {"GEOID": "19169", "NAME": "Aldmoor"}
+    (tmp_path / "t.json").write_text(json.dumps(text))
+    (found,) = outlines.read(tmp_path / "t.json").values()
+    assert (found.county_id, found.name) == ("19169", "Aldmoor")
+
+
+def test_a_ring_that_is_left_open_is_closed(tmp_path):
+    closed, left_open = (
+        outlines.read(_file(tmp_path / f"{end}.geojson", _feature("a", _square(-95.0, 41.0)[:end])))["a"]
+        for end in (5, 4)
+    )
+    assert area_and_centroid(left_open) == pytest.approx(area_and_centroid(closed))
+
+
+def test_what_is_written_reads_back_with_the_same_borders(tmp_path):
+    two = outlines.read(
+        _file(tmp_path / "n.geojson", _feature("w", _square(-95.0, 41.0)), _feature("e", _square(-94.0, 41.0)))
+    )
+    (tmp_path / "again.geojson").write_text(json.dumps(outlines.to_geojson(two)))
+    again = outlines.read(tmp_path / "again.geojson")
+    assert shared_borders(again) == shared_borders(two)
+    assert [outline.name for outline in again.values()] == [outline.name for outline in two.values()]
+
+
+def test_a_large_file_is_refused_unless_asked_for(tmp_path):
+    path = _file(tmp_path / "n.geojson", _feature("w", _square(-95.0, 41.0)))
+    with pytest.raises(CannotRead, match="more than the"):
+        outlines.read(path, largest_bytes=100)
+    assert outlines.read(path, largest_bytes=None)
 
 
 def test_missing_file_and_broken_shapefile(tmp_path):

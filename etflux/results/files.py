@@ -160,7 +160,7 @@ def read_folder(folder: Path | str) -> Results:
         **read_netcdf(folder / NETCDF),
         **frames,
         findings=tables.findings_of(_read_table(folder, "findings")),
-        outlines=outlines.read(folder / OUTLINES) if OUTLINES in manifest["files"] else {},
+        outlines=outlines.read(folder / OUTLINES, None) if OUTLINES in manifest["files"] else {},
         settings=manifest["settings"],
         source=manifest["input"],
         run_id=manifest["run_id"],

@@ -155,12 +155,13 @@ class Results:
 
 
 def run_identity(source: Mapping[str, Any], settings: Mapping[str, Any], version: str = __version__) -> str:
-    """Name of a run: the same input, settings and version give the same one.
+    """Name of a run: the same input, files beside it included, settings and version give the same one.
 
     Examples
     --------
     >>> run_identity({"sha256": "aa"}, {"units": "si"}, "1.0")
     '2acf79dd464d'
     """
-    text = json.dumps([source.get("sha256", ""), dict(settings), version], sort_keys=True, default=str)
+    beside = [source[key] for key in ("weather_files", "profile_files", "outlines_file") if source.get(key)]
+    text = json.dumps([source.get("sha256", ""), dict(settings), version, *beside], sort_keys=True, default=str)
     return hashlib.sha256(text.encode()).hexdigest()[:12]

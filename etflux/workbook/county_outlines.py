@@ -6,7 +6,9 @@ A county joins its outline by id. What does not join is said, and is drawn as a 
 from __future__ import annotations
 
 import re
+from collections import Counter
 from collections.abc import Mapping
+from difflib import get_close_matches
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -17,7 +19,6 @@ from etflux.case import Settings
 from etflux.findings import CannotRead, Finding
 from etflux.outlines import Outline
 from etflux.weather.places import great_circle_km
-from etflux.workbook.headings import nearest
 from etflux.workbook.weather_files import Trouble, beside
 
 if TYPE_CHECKING:
@@ -26,6 +27,7 @@ if TYPE_CHECKING:
 GEOID = re.compile(r"\d{5}\Z")
 MEASURED = ("area_km2", "latitude_deg", "longitude_deg")
 NAMED_MOST = 5  # ids in one sentence
+NO_OUTLINES = "none"  # value of the setting
 ELSEWHERE_KM = 100.0  # a county entered farther than this from its GEOID's place is another one
 
 Cells = set[tuple[int, str | None]]
@@ -39,7 +41,7 @@ def with_outlines(
     Parameters
     ----------
     settings : Settings
-        `outlines_file` names a file beside the workbook.
+        `outlines_file` names a file beside the workbook, or is "none"; blank: the packaged outlines of US counties.
     counties : DataFrame
         Table of a case; `area_km2`, `latitude_deg` and `longitude_deg` may be NaN.
     folder : Path
@@ -56,11 +58,18 @@ def with_outlines(
     packaged, findings = _packaged(counties)
     counties, said = _filled(counties, packaged, unread)
     findings += said
+    if is_none(settings.outlines_file):
+        return counties, {}, findings
     if settings.outlines_file:
-        found, said = _of_file(settings.outlines_file, counties["county_id"].tolist(), folder)
+        found, said = _of_file(settings.outlines_file, counties, folder)
         return counties, found, findings + said
     taken, said = _at_their_place(counties, packaged)
     return counties, taken, findings + said
+
+
+def is_none(named: str) -> bool:
+    """Whether the setting asks for no outlines at all."""
+    return named.strip().casefold() == NO_OUTLINES
 
 
 def _packaged(counties: pd.DataFrame) -> tuple[dict[int, Outline], list[Finding]]:
@@ -105,9 +114,8 @@ def _filled(
             for name in (*blank, *(["name"] if unnamed else [])):
                 filled[name] = filled.get(name, 0) + 1
         elif blank and identity is not None and GEOID.match(str(identity)):
-            close = nearest(str(identity), list(outlines.us_counties()))
             findings.append(
-                Finding("geoid-unknown", "counties", row, "county_id", identity, f"county {identity}", close)
+                Finding("geoid-unknown", "counties", row, "county_id", identity, f"county {identity}", _near(identity))
             )
         else:
             findings += [
@@ -144,40 +152,75 @@ def _at_their_place(
             )
             continue
         found[ids[row]] = Outline(ids[row], outline.name, outline.polygons)
+    lacking = [str(identity) for identity in ids if identity is not None and identity not in found]
+    if found and lacking:
+        findings.append(Finding("county-without-packaged-outline", "counties", detail=_listed(lacking)))
     return found, findings
 
 
-def _of_file(name: str, ids: list[str | None], folder: Path) -> tuple[dict[str, Outline], list[Finding]]:
+def _near(geoid: str) -> str:
+    """The packaged county that an unknown GEOID may mean, in words."""
+    known = outlines.us_counties()
+    alias = outlines.us_county_aliases().get(geoid)
+    if alias is not None:
+        return f"the nearest outline is {alias.outline_geoid}, {known[alias.outline_geoid].name}, of another extent"
+    of_state = [identity for identity in known if identity[:2] == geoid[:2]]
+    close = get_close_matches(geoid, of_state or list(known), n=1, cutoff=0.0)
+    return f"the nearest known is {close[0]}, {known[close[0]].name}"
+
+
+def _of_file(name: str, counties: pd.DataFrame, folder: Path) -> tuple[dict[str, Outline], list[Finding]]:
     """Outlines of a file by county id, and what did not join."""
 
-    def said(code: str, value: str | None = None, detail: str = "") -> Finding:
-        return Finding(code, "settings", None, "outlines_file", value or name, "", detail)
+    def said(code: str, detail: str = "") -> Finding:
+        return Finding(code, "settings", None, "outlines_file", name, "", detail)
 
     path = beside(folder, name)
     if isinstance(path, Trouble):
-        return {}, [said(path.code, detail=path.detail)]
+        return {}, [said(path.code, path.detail)]
     try:
         drawn = outlines.read(path)
     except CannotRead as error:
-        return {}, [said("outlines-unreadable", detail=str(error))]
-    wanted = [str(identity) for identity in ids if identity is not None]
-    alike = {_plain(identity): identity for identity in drawn}
-    joined = {identity: drawn.get(identity) or drawn.get(alike.get(_plain(identity), "")) for identity in wanted}
-    found = {identity: outline for identity, outline in joined.items() if outline is not None}
-    lacking = [identity for identity in wanted if identity not in found]
-    if wanted and not found:
-        detail = (
-            f"the file has {', '.join(list(drawn)[:NAMED_MOST])}; the counties are {', '.join(wanted[:NAMED_MOST])}"
-        )
-        return {}, [said("outlines-join-nothing", detail=detail)]
+        return {}, [said("outlines-unreadable", str(error))]
+    names = {
+        str(identity): str(called or "")
+        for identity, called in zip(counties["county_id"], counties["name"], strict=True)
+        if identity is not None
+    }
+    found = {identity: drawn[identity] for identity in names if identity in drawn}
+    alike = _alike([identity for identity in names if identity not in found], [i for i in drawn if i not in found])
+    found |= {identity: drawn[other] for identity, other in alike.items()}
+    lacking = {identity: called for identity, called in names.items() if identity not in found}
+    if names and not found:
+        there, wanted = (", ".join(list(ids)[:NAMED_MOST]) for ids in (drawn, names))
+        return {}, [said("outlines-join-nothing", f"the file has {there}; the counties are {wanted}")]
     findings = []
+    if alike:
+        findings.append(said("outline-id-alike", _listed([f"{there} as {here}" for here, there in alike.items()])))
+    free = [identity for identity in drawn if identity not in {outline.county_id for outline in found.values()}]
     if lacking:
-        findings.append(said("county-without-outline", detail=_listed(lacking)))
-    used = {outline.county_id for outline in found.values()}
-    over = [identity for identity in drawn if identity not in used]
-    if over:
-        findings.append(said("outline-without-county", detail=_listed(over)))
-    return found, findings
+        words = [f"{identity} {called}".strip() + _close(identity, free) for identity, called in lacking.items()]
+        findings.append(said("county-without-outline", _listed(words)))
+    if free:
+        findings.append(said("outline-without-county", _listed(free)))
+    return {identity: found[identity] for identity in names if identity in found}, findings
+
+
+def _alike(wanted: list[str], drawn: list[str]) -> dict[str, str]:
+    """Ids of a file by the county id that differs in leading zeros or capitals alone; none where two would fit."""
+    plain_wanted, plain_drawn = Counter(map(_plain, wanted)), Counter(map(_plain, drawn))
+    by_plain = {_plain(identity): identity for identity in drawn}
+    return {
+        identity: by_plain[_plain(identity)]
+        for identity in wanted
+        if plain_wanted[_plain(identity)] == 1 and plain_drawn[_plain(identity)] == 1
+    }
+
+
+def _close(identity: str, free: list[str]) -> str:
+    """The id in the file that a county's may mean, in words."""
+    close = get_close_matches(identity, free, n=1)
+    return f" (the file has {close[0]})" if close else ""
 
 
 def _plain(identity: str) -> str:
@@ -186,5 +229,5 @@ def _plain(identity: str) -> str:
 
 
 def _listed(ids: list[str]) -> str:
-    more = f" and {len(ids) - NAMED_MOST} more" if len(ids) > NAMED_MOST else ""
+    more = f"; and {len(ids) - NAMED_MOST} more" if len(ids) > NAMED_MOST else ""
     return f"{len(ids)}: {', '.join(ids[:NAMED_MOST])}{more}"

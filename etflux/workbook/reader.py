@@ -15,7 +15,7 @@ from etflux.case import Case, Settings
 from etflux.findings import Finding
 from etflux.workbook import profile_files
 from etflux.workbook.cells import Book, Limits, open_book
-from etflux.workbook.county_outlines import with_outlines
+from etflux.workbook.county_outlines import MEASURED, with_outlines
 from etflux.workbook.headings import nearest, plain
 from etflux.workbook.places import Places
 from etflux.workbook.rows import Block, frame, read_sheet
@@ -30,6 +30,7 @@ from etflux.workbook.sheets import (
     VERSION_PROPERTY,
     Sheet,
     packaged_rows,
+    sheet_of,
     sheets,
 )  # fmt: skip
 from etflux.workbook.weather_files import Trouble, beside, read_file, sha256
@@ -108,10 +109,30 @@ def read(
     findings += said
     unread = {(found.row, found.quantity) for found in findings if found.table == "counties" and found.row is not None}
     tables["counties"], drawn, said = with_outlines(settings, tables["counties"], path.parent, unread)
-    findings += [places.placed(finding) for finding in said]
+    findings = _without_needless(findings + [places.placed(finding) for finding in said], tables["counties"])
     source = {"path": str(path), "sha256": sha256(path), "template_version": version, "weather_files": files}
     source["profile_files"] = balloons
+    if drawn and settings.outlines_file:
+        file = beside(path.parent, settings.outlines_file)
+        source["outlines_file"] = {} if isinstance(file, Trouble) else {settings.outlines_file: sha256(file)}
     return Case(settings, tables, source, drawn), findings, places
+
+
+def _without_needless(findings: list[Finding], counties: pd.DataFrame) -> list[Finding]:
+    """Findings without those on a column of areas or places that is not there: said once, or not when all is filled."""
+    labels = {column.label: column.name for column in sheet_of("counties").columns if column.name in MEASURED}
+    gone = {
+        labels[found.value]: bool(counties[labels[found.value]].notna().all())
+        for found in findings
+        if (found.table, found.code) == ("counties", "column-missing") and found.value in labels
+    }
+    return [
+        found
+        for found in findings
+        if found.table != "counties"
+        or not (found.code == "column-missing" and gone.get(labels.get(found.value, "")))
+        and not (found.code == "value-missing" and found.quantity in gone)
+    ]
 
 
 def _tell(tell: Progress, share: float, step: str) -> None:

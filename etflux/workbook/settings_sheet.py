@@ -11,6 +11,7 @@ from etflux.case import Settings
 from etflux.findings import Finding
 from etflux.variables import Setting, convert, settings_table, units
 from etflux.workbook.cells import Book
+from etflux.workbook.county_outlines import is_none
 from etflux.workbook.headings import nearest, plain, unit_of
 from etflux.workbook.places import Places
 from etflux.workbook.rows import as_shown
@@ -113,7 +114,7 @@ def _taken(
     value, code, detail = TAKE[kind](cell, column, epoch_1904)
     if kind == "date" and value is not None:
         value = value.date().isoformat()
-    if setting.name in FILE_SETTINGS and value:
+    if setting.name in FILE_SETTINGS and value and not is_none(value):
         path = beside(folder, value)
         if isinstance(path, Trouble):
             return None, path.code, path.detail

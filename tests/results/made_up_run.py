@@ -203,8 +203,13 @@ def _station_dataset(rng, stations, dates, eto, rain):
     values["provisional"] = 0 * source
     return xr.Dataset(
         {name: (("date", "station_id"), array) for name, array in values.items()},
-        coords={"date": dates, "station_id": [f"N{number + 1}" for number in range(stations)]},
-    )
+        coords={
+            "date": dates, "station_id": [f"N{number + 1}" for number in range(stations)],
+            "latitude_deg": ("station_id", 41.0 + 0.2 * np.arange(stations)),
+            "longitude_deg": ("station_id", -93.0 + 0.3 * np.arange(stations)),
+            "elevation_m": ("station_id", 250.0 + 10.0 * np.arange(stations)),
+        },
+    )  # fmt: skip
 
 
 def make(counties=24, days=183, stations=3, per_county=4, air=True, units="si", seed=20310726, **changes):

@@ -11,7 +11,9 @@ import pytest
 import xarray as xr
 
 from etflux.findings import CannotRead, CannotWrite, Finding
+from etflux.outlines import Outline
 from etflux.results import default_folder, files, folder_state, read_folder, read_tables, table_names, write_folder
+from etflux.results.record import run_identity
 
 
 @pytest.fixture(scope="module")
@@ -104,6 +106,47 @@ def test_reading_back_gives_the_same_results(small, whole):
     assert [finding.record() for finding in again.findings] == [finding.record() for finding in small.findings]
     assert (again.run_id, again.issued, again.version) == (small.run_id, small.issued, small.version)
     assert dict(again.settings) == dict(small.settings)
+
+
+def test_places_of_stations_are_written_and_read(small, whole):
+    written = read_tables(whole, ["stations"])["stations"].set_index("station_id")
+    for name in ("latitude_deg", "longitude_deg", "elevation_m"):
+        assert written[name].to_dict() == small.station[name].to_series().to_dict()
+        assert name in read_folder(whole).station.coords
+
+
+def test_outlines_are_written_as_geojson_and_read(small, tmp_path):
+    ring = np.array([[-95.0, 41.0], [-94.0, 41.0], [-94.0, 42.0], [-95.0, 42.0], [-95.0, 41.0]])
+    hole = np.array([[-94.6, 41.4], [-94.6, 41.6], [-94.4, 41.6], [-94.6, 41.4]])
+    ids = small.county["county_id"].to_numpy()[:2]
+    drawn = {
+        ids[0]: Outline(ids[0], "Aldmoor, with a “mark”", ((ring, hole), (ring + 2.0,))),
+        ids[1]: Outline(ids[1], "", ((ring + [1.0, 0.0],),)),
+    }
+    folder = write_folder(dataclasses.replace(small, outlines=drawn), tmp_path / "run")
+    text = json.loads((folder / "counties.geojson").read_text(encoding="utf-8"))
+    assert text["type"] == "FeatureCollection"
+    assert "counties.geojson" in json.loads((folder / "run.json").read_text())["files"]
+    again = read_folder(folder).outlines
+    assert list(again) == list(drawn)
+    assert again[ids[0]].name == drawn[ids[0]].name
+    for read, given in zip(again.values(), drawn.values(), strict=True):
+        for mine, theirs in zip(read.polygons, given.polygons, strict=True):
+            for read_ring, given_ring in zip(mine, theirs, strict=True):
+                np.testing.assert_array_equal(read_ring, given_ring)
+    assert read_folder(write_folder(small, tmp_path / "without")).outlines == {}
+    assert not (tmp_path / "without" / "counties.geojson").exists()
+
+
+def test_files_beside_the_workbook_make_another_run(small):
+    source = dict(small.source)
+    plain = run_identity(source, small.settings)
+    others = {
+        run_identity(source | {key: {"beside.csv": "cd" * 32}}, small.settings)
+        for key in ("weather_files", "profile_files", "outlines_file")
+    }
+    assert plain not in others
+    assert run_identity(source | {"weather_files": {}}, small.settings) == plain
 
 
 def test_a_finding_without_a_row_is_read_back(small, tmp_path):

@@ -14,6 +14,7 @@ from etflux.variables import flag_bits, quantities
 # major version a column may only be added, at the end of its table.
 LISTED = {
     "counties": "county_id area_km2 latitude_deg longitude_deg",
+    "stations": "station_id latitude_deg longitude_deg elevation_m",
     "stands": "unit_id stand_id part kind tag county_id cover_id soil_id water_regime area_km2 stored_start_mm",
     "county_daily": "date county_id eto_mm rain_mm et_stands_mm et_county_mm le_stands_w_m2 le_county_w_m2 "
     "le_daytime_w_m2 le_transpiration_w_m2 le_evaporation_w_m2 water_volume_hm3 represented_pct mixing_depth_m "

@@ -1,12 +1,16 @@
 """Outlines beside the workbook and from the package: what joins, what is filled in, what is said."""
 
 import json
+import re
 
 import numpy as np
+import openpyxl
 import pandas as pd
 import pytest
 
 from etflux import outlines
+from etflux.case import settings_record
+from etflux.results.record import run_identity
 from etflux.workbook import check, read, template
 
 
@@ -52,11 +56,49 @@ def test_a_file_joins_on_id_and_says_what_did_not(workbook, tmp_path):
     assert "1: B2" in said.sentence()
 
 
-def test_ids_that_lost_their_zeros_or_capitals_join(workbook, tmp_path):
+def test_ids_that_lost_their_zeros_or_capitals_join_and_it_is_said(workbook, tmp_path):
     drawn(tmp_path / "here.geojson", {"a1": square(-91.5, 41.0), "0B2": square(-90.0, 41.0)})
     case, findings, _ = read(workbook(outlines_file="here.geojson"))
-    assert set(case.outlines) == {"A1", "B2"}
-    assert codes(findings) == set()
+    assert list(case.outlines) == ["A1", "B2"]
+    (found,) = [finding for finding in findings if "outline" in finding.code]
+    assert (found.code, found.severity) == ("outline-id-alike", "note")
+    assert found.detail == "2: a1 as A1, 0B2 as B2"
+
+
+def test_an_id_that_could_be_either_of_two_joins_neither(workbook, tmp_path):
+    drawn(tmp_path / "here.geojson", {"a1": square(-91.5, 41.0), "0A1": square(-92.5, 41.0), "B2": square(-90.0, 41.0)})
+    case, findings, _ = read(workbook(outlines_file="here.geojson"))
+    assert list(case.outlines) == ["B2"]
+    (said,) = [finding for finding in findings if finding.code == "county-without-outline"]
+    assert "A1" in said.detail
+    assert "the file has 0A1" in said.detail or "the file has a1" in said.detail
+
+
+def test_numbers_and_long_geoids_are_ids(workbook, tmp_path, tables):
+    counties = tables["counties"].assign(county_id=["19169", "19015"])
+    drawn(tmp_path / "here.geojson", {"0500000US19169": square(-91.5, 41.0), 19015.0: square(-90.0, 41.0)})
+    case, _, _ = read(workbook(counties, outlines_file="here.geojson"))
+    assert set(case.outlines) == {"19169", "19015"}
+
+
+def test_the_run_is_another_when_the_file_is(workbook, tmp_path):
+    path = workbook(outlines_file="here.geojson")
+    ids = []
+    for west in (-91.5, -91.6):
+        drawn(tmp_path / "here.geojson", {"A1": square(west, 41.0), "B2": square(-90.0, 41.0)})
+        case, _, _ = read(path)
+        assert len(case.source["outlines_file"]["here.geojson"]) == 64
+        ids.append(run_identity(case.source, settings_record(case.settings)))
+    assert ids[0] != ids[1]
+
+
+@pytest.mark.parametrize("word", ["none", "None"])
+def test_none_turns_outlines_off_but_not_the_filling(tmp_path, tables, word):
+    path = template.write(tmp_path / "us.xlsx", "si", us_tables(tables, ["19169", "19015"]), {"outlines_file": word})
+    case, findings, _ = read(path)
+    assert case.outlines == {}
+    assert case.table("counties")["area_km2"].notna().all()
+    assert {finding.code for finding in findings if "outline" in finding.code} == {"county-from-outline"}
 
 
 @pytest.mark.parametrize(
@@ -103,7 +145,7 @@ def test_typing_a_geoid_fills_name_place_and_area(tmp_path, tables):
     path = template.write(tmp_path / "us.xlsx", "si", us_tables(tables, ["19169", "19015"]), {})
     case, findings, _ = read(path)
     county = case.table("counties").set_index("county_id")
-    assert list(county["name"]) == ["Story, Iowa", "Boone, Iowa"]
+    assert list(county["name"]) == ["Story, IA", "Boone, IA"]
     assert county["area_km2"].to_numpy() == pytest.approx([574 * 2.59, 574 * 2.59], rel=0.01)
     assert county.loc["19169", ["latitude_deg", "longitude_deg"]].to_list() == pytest.approx([42.04, -93.46], abs=0.02)
     assert set(case.outlines) == {"19169", "19015"}
@@ -118,15 +160,13 @@ def test_typing_a_geoid_fills_name_place_and_area(tmp_path, tables):
 
 def test_a_number_that_lost_its_zero_is_found(tmp_path, tables):
     path = template.write(tmp_path / "us.xlsx", "si", us_tables(tables, ["01001", "01021"]), {})
-    import openpyxl
-
     book = openpyxl.load_workbook(path)
     sheet = book["Counties"]
     row = next(row for row in range(1, 9) if sheet.cell(row, 1).value == "01001")
     sheet.cell(row, 1).value = 1001
     book.save(path)
     case, findings, _ = read(path)
-    assert case.table("counties")["name"].iloc[0] == "Autauga, Alabama"
+    assert case.table("counties")["name"].iloc[0] == "Autauga, AL"
     assert "id-padded" in {finding.code for finding in findings}
 
 
@@ -134,7 +174,7 @@ def test_what_a_person_entered_is_kept(tmp_path, tables):
     changed = us_tables(tables, ["19169", "19015"])
     changed["counties"] = us(["19169", "19015"], name=["Mine", None], area_km2=[1500.0, np.nan])
     case, _, _ = read(template.write(tmp_path / "us.xlsx", "si", changed, {}))
-    assert case.table("counties")["name"].tolist() == ["Mine", "Boone, Iowa"]
+    assert case.table("counties")["name"].tolist() == ["Mine", "Boone, IA"]
     assert case.table("counties")["area_km2"].iloc[0] == 1500.0
 
 
@@ -143,10 +183,36 @@ def test_an_unknown_geoid_is_answered_with_the_nearest(tmp_path, tables):
     (found,) = [finding for finding in findings if finding.code == "geoid-unknown"]
     assert found.place == "Counties!A4"
     assert found.severity == "error"
-    assert "191" in found.detail
+    assert re.fullmatch("the nearest known is 191[0-9]{2}, .+, IA", found.detail)
 
 
-@pytest.mark.parametrize(("old", "name"), [("46113", "Oglala Lakota, South Dakota"), ("12025", "Miami-Dade, Florida")])
+def test_columns_of_place_and_area_may_be_left_out_of_us_counties(tmp_path, tables):
+    path = without_columns(template.write(tmp_path / "us.xlsx", "si", us_tables(tables, ["19169", "19015"]), {}), 3)
+    case, findings, _ = read(path)
+    assert case.table("counties")["area_km2"].notna().all()
+    assert not [finding for finding in findings if finding.severity == "error"]
+
+
+def test_a_missing_column_of_other_counties_is_said_once(workbook):
+    _, findings, _ = read(without_columns(workbook(), 1))
+    codes = [finding.code for finding in findings if finding.table == "counties" and finding.severity == "error"]
+    assert codes == ["column-missing"]
+
+
+def without_columns(path, count):
+    """The workbook without the first columns of area, latitude and longitude in its sheet of counties."""
+    book = openpyxl.load_workbook(path)
+    sheet = book["Counties"]
+    heading = next(row for row in range(1, 9) if sheet.cell(row, 1).value == "County id")
+    titles = [str(sheet.cell(heading, column).value) for column in range(1, 12)]
+    for name in ("Area", "Latitude", "Longitude")[:count]:
+        sheet.delete_cols(1 + next(k for k, title in enumerate(titles) if title.startswith(name)))
+        titles = [title for title in titles if not title.startswith(name)]
+    book.save(path)
+    return path
+
+
+@pytest.mark.parametrize(("old", "name"), [("46113", "Oglala Lakota, SD"), ("12025", "Miami-Dade, FL")])
 def test_a_renumbered_geoid_takes_the_outline_of_the_new_one(tmp_path, tables, old, name):
     case, findings, _ = read(template.write(tmp_path / "us.xlsx", "si", us_tables(tables, [old, "19015"]), {}))
     assert case.table("counties")["name"].iloc[0] == name
@@ -158,6 +224,23 @@ def test_a_part_of_an_old_county_must_be_entered(tmp_path, tables):
     """Chugach is half of what the outlines have: its area is not known here."""
     findings = check(template.write(tmp_path / "us.xlsx", "si", us_tables(tables, ["02063", "19015"]), {}))
     assert {("Counties!A4", "geoid-renumbered"), ("Counties!A4", "geoid-unknown")} <= codes(findings)
+
+
+@pytest.mark.parametrize("geoid", [f"09{code}" for code in range(110, 200, 10)])
+def test_a_planning_region_says_which_county_is_near(geoid):
+    alias = outlines.us_county_aliases()[geoid]
+    assert not alias.whole
+    assert alias.outline_geoid.startswith("090")
+
+
+def test_counties_of_which_some_have_no_packaged_outline(tmp_path, tables):
+    changed = us_tables(tables, ["19169", "Upper"])
+    changed["counties"] = us(["19169", "Upper"], area_km2=[np.nan, 900.0], latitude_deg=[np.nan, 42.3],
+                             longitude_deg=[np.nan, -93.4])  # fmt: skip
+    case, findings, _ = read(template.write(tmp_path / "us.xlsx", "si", changed, {}))
+    assert list(case.outlines) == ["19169"]
+    (said,) = [finding for finding in findings if finding.code == "county-without-packaged-outline"]
+    assert said.detail == "1: Upper"
 
 
 def test_an_invented_five_digit_id_elsewhere_takes_no_outline(workbook, tables):
