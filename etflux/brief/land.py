@@ -57,7 +57,8 @@ class Land:
         corners = [np.asarray(path.vertices) for path in self.paths if path is not None]
         radius = 1.5 * self.dot_radius_deg[self.dots, None]
         places = np.column_stack([self.longitude_deg, self.latitude_deg])[self.dots]
-        every = np.concatenate([*corners, places - radius, places + radius, np.zeros((0 if len(self.paths) else 1, 2))])
+        every = np.concatenate([*corners, places - radius, places + radius])
+        every = every if len(every) else np.zeros((1, 2))
         (west, south), (east, north) = every.min(axis=0), every.max(axis=0)
         return float(west), float(east), float(south), float(north)
 
@@ -95,7 +96,7 @@ class Land:
     @cached_property
     def over_the_date_line(self) -> bool:
         """Whether western longitudes are counted on past 180."""
-        return style.greatest(self.longitude_deg) > 180.0
+        return self.extent[1] > 180.0
 
 
 def land_of(results: Results) -> Land:
@@ -104,7 +105,8 @@ def land_of(results: Results) -> Land:
     outlines: Mapping[str, Outline] = getattr(results, "outlines", None) or {}
     ids = county["county_id"].to_numpy().astype(str)
     longitude = county["longitude_deg"].to_numpy().astype(float)
-    known = longitude[np.isfinite(longitude)]
+    rings = [ring[:, 0] for name in ids if name in outlines for polygon in outlines[name].polygons for ring in polygon]
+    known = np.concatenate([longitude[np.isfinite(longitude)], *rings])
     turn = bool(np.ptp(known) > 180.0) if len(known) else False
     return Land(
         tuple(_path(outlines[name], turn) if name in outlines else None for name in ids),

@@ -79,7 +79,7 @@ def county_map(
     title = shown.label if cover is None else f"{shown.label}: {_cover_words(results, cover)}"
     box = style.frame(
         figure, size, results, f"{title}, {style.days_words(days)}", _subtitle(results, shown, days, cover),
-        provisional_note(results, days),
+        [*_unplaced_note(land), *provisional_note(results, days)],
     )  # fmt: skip
     main, side, small = _places(box, size, len(panels), bool(ends))
     unranked = unranked_counties(results, shown, days)
@@ -101,6 +101,11 @@ def county_map(
     if ends:
         _draw_ends(figure, small, land, ends, shown, unranked, size, system, scale)
     return figure
+
+
+def _unplaced_note(land: Land) -> list[str]:
+    number = int((~land.drawn & ~land.dots).sum())
+    return [f"Not drawn, having neither outline nor place: {number} of {len(land.paths)} counties."] if number else []
 
 
 def _key_words(results: Results, shown: Shown, days: np.ndarray, system: System) -> dict[str, str]:
@@ -213,15 +218,18 @@ def _draw_panel(
         shapes.set_norm(colours.steps)
         shapes.set_array(panel.values[here])
     marks = set()
-    for name, here, hatch, ground in (
-        ("missing", ~has, MISSING_HATCH, PAPER),
-        ("unranked", has & unranked, UNRANKED_HATCH, "none"),
-        ("gaps", has & panel.gaps & ~unranked, GAPS_HATCH, "none"),
+    # White stripes on dark counties, closer ones where counties are small.
+    dark = np.array([style.ink_on(colours.colour(value)) == PAPER for value in np.nan_to_num(panel.values)]) & has
+    dense = 1 if 72.0 * np.median(land.width_deg) * land.inch_per_degree(place) > 24.0 else 2
+    for name, here, hatch in (
+        ("missing", ~has, MISSING_HATCH),
+        ("unranked", has & unranked, UNRANKED_HATCH),
+        ("gaps", has & panel.gaps & ~unranked, GAPS_HATCH),
     ):
-        if here.any():
-            marks.add(name)
-            look = {"facecolor": ground, "edgecolor": SOFT, "linewidth": 0.8 * land.edge(place)["linewidth"]}
-            draw_shapes(axes, land, here, name, hatch=hatch, **look)
+        marks |= {name} if here.any() else set()
+        for part, stripes in ((here & dark, PAPER), (here & ~dark, SOFT)):
+            look = {"facecolor": "none" if name != "missing" else PAPER, "edgecolor": stripes}
+            draw_shapes(axes, land, part, name, hatch=dense * hatch, **look, linewidth=land.edge(place)["linewidth"])
     set_extent(axes, land, anchor)
     if panel.name:
         axes.set_title(panel.name, fontsize=size.text_pt, color=INK, family=style.FAMILY, loc="left", pad=2.0)

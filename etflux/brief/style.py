@@ -155,7 +155,7 @@ def shortened(text: str, points: float, room_in: float, bold: bool = False) -> s
     Examples
     --------
     >>> shortened("Upper Basin", 10.0, 9.0), shortened("Upper Basin", 10.0, 0.5)
-    ('Upper Basin', 'Upp…')
+    ('Upper Basin', 'Uppe…')
     """
     if width_in(text, points, bold) <= room_in:
         return text

@@ -196,6 +196,38 @@ def test_counties_without_an_outline_are_dots_of_their_area(run):
     assert [len(shapes.get_paths()) for shapes in _named(draw(some, "eto_mm"), "counties")] == [4, 2]
 
 
+def test_a_county_over_the_date_line_stays_in_one_piece(run):
+    """Squares at 179 to 180 and -180 to -179 degrees are neighbours."""
+    ids = run.county["county_id"].to_numpy().astype(str)
+    outlines = {name: _square(name, -180.0 if n % 2 else 179.0, 51.0) for n, name in enumerate(ids)}
+    county = run.county.assign_coords(longitude_deg=("county_id", [-179.5 if n % 2 else 179.5 for n in range(6)]))
+    figure = draw(dataclasses.replace(run, county=county, outlines=outlines), "eto_mm")
+    west, east = figure.axes[0].get_xlim()
+    assert east - west == pytest.approx(2.0, rel=0.05)
+
+
+def test_a_county_that_is_nowhere_is_said_to_be(run):
+    county = run.county.assign_coords(longitude_deg=("county_id", [np.nan, *[-93.0] * 5]))
+    figure = draw(dataclasses.replace(run, county=county, outlines={}), "eto_mm")
+    assert len(_named(figure, "counties")[0].get_paths()) == 5
+    assert "neither outline nor place: 1 of 6 counties" in "\n".join(_words(figure))
+    nowhere = run.county.assign_coords(longitude_deg=("county_id", [np.nan] * 6))
+    assert not _named(draw(dataclasses.replace(run, county=nowhere, outlines={}), "eto_mm"), "counties")
+
+
+def test_hatching_shows_on_dark_counties_too(run):
+    county = run.county.copy(deep=True)
+    for values, stripes in (([1.0, 1.5, 2.0, 2.5, 3.0, 5.0], 1.0), ([5.0, 4.0, 3.0, 2.5, 2.0, 1.0], 0.2)):
+        county["contribution_carried_c"][-1] = values
+        (unranked,) = _named(draw(dataclasses.replace(run, county=county), "contribution_carried_c"), "unranked")
+        assert style.luminance(unranked.get_edgecolor()[0]) == pytest.approx(stripes, abs=0.1)
+
+
+def test_a_county_can_be_pointed_out(run):
+    (shape,) = _named(draw(run, "eto_mm", county="99003"), "pointed out")
+    np.testing.assert_array_equal(shape.get_paths()[0].vertices[0], [-93.0, 41.0])
+
+
 def test_stations_and_wind_are_where_they_are(run):
     figure = draw(run, "eto_mm", units="us")
     (stations,) = _named(figure, "stations")
