@@ -16,6 +16,7 @@ if TYPE_CHECKING:
 
     Progress = Callable[[str, float], None]
 
+PAGE = "brief.html"  # opens from disk in any browser
 MOVED = "moved.csv"  # days that an earlier run in the same folder gave otherwise
 
 
@@ -52,6 +53,7 @@ def run_workbook(
     CannotRead, CannotWrite
         If the workbook cannot be read, or the results cannot be written.
     """
+    from etflux.brief.page import write_page
     from etflux.case import with_settings
     from etflux.findings import ProblemsFound, has_errors
     from etflux.results import write_folder
@@ -72,13 +74,16 @@ def run_workbook(
     moved = moved_days(results, folder)
     if moved is not None and len(moved):
         results = replace(results, findings=[*results.findings, _moved_note(moved, results.settings["moved_et_mm"])])
+    others: dict[str, Any] = {PAGE: lambda given, where: write_page(given, where, on=day)}
+    if moved is not None:
+        others[MOVED] = lambda given, where: moved.to_csv(where, index=False)
     tell("writing", 0.6)
     write_folder(
         results,
         folder,
         workbook_writer=lambda given, where: write_report(given, where, on=day),
         progress=lambda step, share: tell(step, 0.6 + 0.4 * share),
-        others=None if moved is None else {MOVED: lambda given, where: moved.to_csv(where, index=False)},
+        others=others,
     )
     return results
 
@@ -152,5 +157,5 @@ def summary_text(results: Results, on: str | dt.date | None = None, folder: Path
     if results.findings:
         lines += ["", report(results.findings, limit=6)]
     if folder is not None:
-        lines += ["", f"Results are in {folder}: open results.xlsx first."]
+        lines += ["", f"Results are in {folder}: open brief.html or results.xlsx first."]
     return "\n".join(lines)

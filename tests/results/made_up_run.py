@@ -170,7 +170,10 @@ def _county_dataset(rng, stand, units, dates, eto, rain, air):
     by_hour = with_water[..., None] + np.array([-1.0, 0.0, 0.5])
     return dataset.assign_coords(hour=[12.0, 15.0, 18.0]).assign(
         le_by_tag_w_m2=(("date", "county_id", "tag"), by_tag),
-        hourly_dew_point_c=(("date", "county_id", "hour"), by_hour),
+        hourly_dew_point_mixed_c=(("date", "county_id", "hour"), by_hour),
+        hourly_contribution_c=(("date", "county_id", "hour"), contribution[..., None] * np.array([0.8, 1.0, 1.1])),
+        hourly_mixing_depth_m=(("date", "county_id", "hour"), depth[..., None] * np.array([0.8, 1.0, 1.1])),
+        clock_minus_solar_h=(("date", "county_id"), np.full(contribution.shape, 0.3)),
     )
 
 
