@@ -1,0 +1,36 @@
+"""The notebooks run from top to bottom, and are kept without outputs."""
+
+from pathlib import Path
+
+import nbformat
+import pytest
+from nbclient import NotebookClient
+
+NOTEBOOKS = sorted((Path(__file__).parents[1] / "notebooks").glob("*.ipynb"))
+
+
+def test_there_are_notebooks():
+    assert len(NOTEBOOKS) >= 3
+
+
+@pytest.mark.parametrize("path", NOTEBOOKS, ids=lambda path: path.stem)
+def test_kept_without_outputs(path):
+    notebook = nbformat.read(path, as_version=4)
+    nbformat.validate(notebook)
+    for cell in notebook.cells:
+        assert not cell.get("outputs")
+        assert cell.get("execution_count") is None
+
+
+@pytest.mark.filterwarnings("ignore")  # of the kernel's own libraries
+@pytest.mark.parametrize("path", NOTEBOOKS, ids=lambda path: path.stem)
+def test_runs_from_top_to_bottom(path):
+    notebook = nbformat.read(path, as_version=4)
+    NotebookClient(notebook, timeout=300, kernel_name="python3", resources={"metadata": {"path": path.parent}}).execute()
+    errors = [
+        output
+        for cell in notebook.cells
+        for output in cell.get("outputs", [])
+        if output.output_type == "error" or (output.output_type == "stream" and output.name == "stderr")
+    ]
+    assert not errors
