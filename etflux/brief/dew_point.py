@@ -156,4 +156,7 @@ def _error_words(found: pd.DataFrame, system: System) -> str:
     error = from_si(found["estimated_c"] - found["observed_c"], "estimate_error_c", system)
     unit = quantity("estimate_error_c").unit_in(system)
     half = float(np.median(np.abs(error)))
-    return f"; {len(found)} county-days, mean error {error.mean():+.1f} {unit}, half within {half:.1f} {unit}"
+    space = "\N{NO-BREAK SPACE}"
+    return (
+        f"; {len(found)} county-days, mean error {error.mean():+.1f}{space}{unit}, half within {half:.1f}{space}{unit}"
+    )

@@ -172,7 +172,7 @@ def shortened(text: str, points: float, room_in: float, bold: bool = False) -> s
 def wrapped(text: str, points: float, room_in: float, lines: int, bold: bool = False) -> str:
     """The text on at most `lines` lines of a width; what does not fit is cut with an ellipsis."""
     done: list[str] = []
-    words = text.split()
+    words = [word for word in text.split(" ") if word]  # a no-break space keeps a number with its unit
     while words and len(done) < lines - 1:
         count = 1
         while count < len(words) and width_in(" ".join(words[: count + 1]), points, bold) <= room_in:

@@ -85,7 +85,11 @@ def _named(figure, gid):
 
 def _words(figure):
     """Every text that is seen, with what was escaped for the drawing taken back."""
-    return [text.get_text().replace(r"\$", "$") for text in figure.findobj(Text) if text.get_visible()]
+    return [
+        text.get_text().replace(r"\$", "$").replace("\N{NO-BREAK SPACE}", " ")
+        for text in figure.findobj(Text)
+        if text.get_visible()
+    ]
 
 
 # --- maps ---
