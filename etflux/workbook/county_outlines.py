@@ -9,6 +9,7 @@ import re
 from collections import Counter
 from collections.abc import Mapping
 from difflib import get_close_matches
+from functools import cache
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -28,7 +29,7 @@ GEOID = re.compile(r"\d{5}\Z")
 MEASURED = ("area_km2", "latitude_deg", "longitude_deg")
 NAMED_MOST = 5  # ids in one sentence
 NO_OUTLINES = "none"  # value of the setting
-ELSEWHERE_KM = 100.0  # a county entered farther than this from its GEOID's place is another one
+ELSEWHERE_KM = 100.0  # a county entered farther than this from its GEOID's outline is another one
 
 Cells = set[tuple[int, str | None]]
 
@@ -56,6 +57,7 @@ def with_outlines(
     findings : list of Finding
     """
     packaged, findings = _packaged(counties)
+    packaged, elsewhere = _at_their_place(counties, packaged)
     counties, said = _filled(counties, packaged, unread)
     findings += said
     if is_none(settings.outlines_file):
@@ -63,8 +65,8 @@ def with_outlines(
     if settings.outlines_file:
         found, said = _of_file(settings.outlines_file, counties, folder)
         return counties, found, findings + said
-    taken, said = _at_their_place(counties, packaged)
-    return counties, taken, findings + said
+    found, said = _each_once(counties["county_id"].tolist(), packaged)
+    return counties, found, findings + elsewhere + said
 
 
 def is_none(named: str) -> bool:
@@ -84,9 +86,12 @@ def _packaged(counties: pd.DataFrame) -> tuple[dict[int, Outline], list[Finding]
         outline = known.get(identity)
         if outline is None and identity in aliases:
             alias = aliases[identity]
-            outline = known[alias.outline_geoid] if alias.whole else None
+            near = known[alias.outline_geoid]
+            outline = near if alias.whole else None
+            which = f"its outline is that of {near.county_id}, {near.name}" if alias.whole else "no outline is used"
+            detail = f"{alias.change}; {which}"
             findings.append(
-                Finding("geoid-renumbered", "counties", row, "county_id", identity, f"county {identity}", alias.change)
+                Finding("geoid-renumbered", "counties", row, "county_id", identity, f"county {identity}", detail)
             )
         if outline is not None:
             found[row] = outline
@@ -97,65 +102,73 @@ def _filled(
     counties: pd.DataFrame, packaged: Mapping[int, Outline], unread: Cells
 ) -> tuple[pd.DataFrame, list[Finding]]:
     """Blank name, place and area of US counties from their outlines; an error where there is none."""
-    counties = counties.copy()
-    if "name" not in counties:
-        counties["name"] = None
-    filled: dict[str, int] = {}
+    columns = {name: counties[name].to_numpy(dtype=float, copy=True) for name in MEASURED}
+    names = counties["name"].tolist() if "name" in counties else [None] * len(counties)
+    filled: Counter[str] = Counter()
     findings = []
     for row, identity in enumerate(counties["county_id"].tolist()):
-        blank = [name for name in MEASURED if np.isnan(counties[name].iloc[row]) and (row, name) not in unread]
-        unnamed = counties["name"].iloc[row] in (None, "")
-        if row in packaged and (blank or unnamed):
-            values = dict(zip(MEASURED, outlines.area_and_centroid(packaged[row]), strict=True))
+        blank = [name for name in MEASURED if np.isnan(columns[name][row]) and (row, name) not in unread]
+        if row in packaged:
+            values = dict(zip(MEASURED, outlines.area_and_centroid(packaged[row]), strict=True)) if blank else {}
             for name in blank:
-                counties.loc[counties.index[row], name] = values[name]
-            if unnamed:
-                counties.loc[counties.index[row], "name"] = packaged[row].name
-            for name in (*blank, *(["name"] if unnamed else [])):
-                filled[name] = filled.get(name, 0) + 1
-        elif blank and identity is not None and GEOID.match(str(identity)):
+                columns[name][row] = values[name]
+            unnamed = ["name"] if names[row] in (None, "") else []
+            names[row] = packaged[row].name if unnamed else names[row]
+            filled.update(blank + unnamed)
+            continue
+        subject = f"county {identity}" if identity is not None else ""
+        if blank and identity is not None and GEOID.match(str(identity)) and identity not in outlines.us_counties():
             findings.append(
-                Finding("geoid-unknown", "counties", row, "county_id", identity, f"county {identity}", _near(identity))
+                Finding("geoid-unknown", "counties", row, "county_id", identity, subject, _near(str(identity)))
             )
         else:
-            findings += [
-                Finding("value-missing", "counties", row, name, None, f"county {identity}" if identity else "")
-                for name in blank
-            ]
+            findings += [Finding("value-missing", "counties", row, name, None, subject) for name in blank]
     if filled:
         words = {"area_km2": "outline area", "latitude_deg": "latitude", "longitude_deg": "longitude", "name": "name"}
-        detail = ", ".join(f"{words[name]} of {count}" for name, count in filled.items())
-        findings.append(Finding("county-from-outline", "counties", detail=detail))
-    return counties, findings
+        detail = ", ".join(f"{word} of {filled[name]}" for name, word in words.items() if filled[name])
+        findings.append(Finding("county-from-outline", "counties", subject="cells of US counties", detail=detail))
+    return counties.assign(name=np.array(names, dtype=object), **columns), findings
 
 
 def _at_their_place(
     counties: pd.DataFrame, packaged: Mapping[int, Outline]
-) -> tuple[dict[str, Outline], list[Finding]]:
-    """Packaged outlines by county id, of counties that lie where their GEOID does; each outline once."""
-    found: dict[str, Outline] = {}
+) -> tuple[dict[int, Outline], list[Finding]]:
+    """Packaged outlines of the counties that lie where their GEOID does, as far as a place is entered."""
+    found: dict[int, Outline] = {}
     findings = []
-    ids = counties["county_id"].tolist()
-    used: dict[str, int] = {}
-    for outline in packaged.values():
-        used[outline.county_id] = used.get(outline.county_id, 0) + 1
     for row, outline in packaged.items():
-        if used[outline.county_id] > 1:
+        entered = counties["latitude_deg"].iloc[row], counties["longitude_deg"].iloc[row]
+        middle = outlines.area_and_centroid(outline)[1:]
+        here = [own if np.isfinite(own) else known for own, known in zip(entered, middle, strict=True)]
+        corners = np.concatenate([ring for polygon in outline.polygons for ring in polygon] + [[middle[::-1]]])
+        km = great_circle_km(np.array(here[:1]), np.array(here[1:]), corners[:, 1], corners[:, 0]).min()
+        if km <= ELSEWHERE_KM:
+            found[row] = outline
             continue
-        here = counties["latitude_deg"].iloc[row], counties["longitude_deg"].iloc[row]
-        _, latitude, longitude = outlines.area_and_centroid(outline)
-        km = great_circle_km(*(np.array([value]) for value in (*here, latitude, longitude)))[0, 0]
-        if not km <= ELSEWHERE_KM:
-            detail = f"{outline.name} is {km:.0f} km away"
-            findings.append(
-                Finding("geoid-elsewhere", "counties", row, "county_id", ids[row], f"county {ids[row]}", detail)
-            )
-            continue
-        found[ids[row]] = Outline(ids[row], outline.name, outline.polygons)
-    lacking = [str(identity) for identity in ids if identity is not None and identity not in found]
-    if found and lacking:
-        findings.append(Finding("county-without-packaged-outline", "counties", detail=_listed(lacking)))
+        identity = counties["county_id"].iloc[row]
+        detail = f"{outline.name} is {km:.0f} km away"
+        findings.append(
+            Finding("geoid-elsewhere", "counties", row, "county_id", identity, f"county {identity}", detail)
+        )
     return found, findings
+
+
+def _each_once(
+    ids: list[str | None], packaged: Mapping[int, Outline]
+) -> tuple[dict[str, Outline], list[Finding]]:  # fmt: skip
+    """Packaged outlines by county id, none of them twice; a note where only some counties have one."""
+    used = Counter(outline.county_id for outline in packaged.values())
+    found = {
+        str(ids[row]): Outline(str(ids[row]), outline.name, outline.polygons)
+        for row, outline in packaged.items()
+        if used[outline.county_id] == 1
+    }
+    lacking = [str(identity) for identity in ids if identity is not None and identity not in found]
+    if not found or not lacking:
+        return found, []
+    return found, [
+        Finding("county-without-packaged-outline", "counties", subject="some counties", detail=_listed(lacking))
+    ]
 
 
 def _near(geoid: str) -> str:
@@ -164,9 +177,19 @@ def _near(geoid: str) -> str:
     alias = outlines.us_county_aliases().get(geoid)
     if alias is not None:
         return f"the nearest outline is {alias.outline_geoid}, {known[alias.outline_geoid].name}, of another extent"
-    of_state = [identity for identity in known if identity[:2] == geoid[:2]]
-    close = get_close_matches(geoid, of_state or list(known), n=1, cutoff=0.0)
-    return f"the nearest known is {close[0]}, {known[close[0]].name}"
+    digits = _digits()
+    mine = np.array([int(digit) for digit in geoid])
+    wrong = (digits != mine).sum(axis=1)
+    turned = (np.sort(digits, axis=1) == np.sort(mine)).all(axis=1)  # the same digits in another order: one mistake
+    far = np.abs((digits - mine) @ 10 ** np.arange(len(mine))[::-1])
+    close = list(known)[np.lexsort((far, np.where(turned, 1, wrong)))[0]]
+    return f"the nearest known is {close}, {known[close].name}"
+
+
+@cache
+def _digits() -> np.ndarray:
+    """Digits of the packaged GEOIDs, (county, 5)."""
+    return np.array([[int(digit) for digit in geoid] for geoid in outlines.us_counties()])
 
 
 def _of_file(name: str, counties: pd.DataFrame, folder: Path) -> tuple[dict[str, Outline], list[Finding]]:

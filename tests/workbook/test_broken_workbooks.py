@@ -363,7 +363,7 @@ BROKEN = [
             put("Rest of county", A5=19103),
             put("Wind", A5=19103),
         ),
-        set(),
+        {("Counties", "", "county-without-packaged-outline")},  # a US county where it is; its neighbour is none
     ),
     Broken(
         "county id of four digits",
@@ -375,6 +375,7 @@ BROKEN = [
             put("Wind", A5=1001),
         ),
         {
+            ("Counties", "A4", "geoid-elsewhere"),
             ("Counties", "A4", "id-padded"),
             ("Mixing depths", "A4", "id-padded"),
             ("Rest of county", "A5", "id-padded"),

@@ -216,7 +216,9 @@ def without_columns(path, count):
 def test_a_renumbered_geoid_takes_the_outline_of_the_new_one(tmp_path, tables, old, name):
     case, findings, _ = read(template.write(tmp_path / "us.xlsx", "si", us_tables(tables, [old, "19015"]), {}))
     assert case.table("counties")["name"].iloc[0] == name
-    assert "geoid-renumbered" in {finding.code for finding in findings}
+    (said,) = [finding for finding in findings if finding.code == "geoid-renumbered"]
+    assert said.severity == "note"
+    assert f", {name}" in said.detail
     assert old in case.outlines
 
 
@@ -244,11 +246,29 @@ def test_counties_of_which_some_have_no_packaged_outline(tmp_path, tables):
 
 
 def test_an_invented_five_digit_id_elsewhere_takes_no_outline(workbook, tables):
-    counties = tables["counties"].assign(county_id=["06037", "B2"])
+    counties = tables["counties"].assign(county_id=["06037", "B2"], name=[None, "Lower"])
     case, findings, _ = read(workbook(counties=counties))
     assert case.outlines == {}
+    assert case.table("counties")["name"].tolist() == [None, "Lower"]
     (found,) = [finding for finding in findings if finding.code == "geoid-elsewhere"]
     assert "Los Angeles" in found.sentence()
+
+
+def test_a_place_far_from_the_middle_may_still_be_in_the_county(workbook, tables):
+    """Aleutians West: its internal point in the Census Bureau's 2017 Gazetteer is 480 km from its middle."""
+    counties = tables["counties"].assign(county_id=["02016", "B2"], latitude_deg=[51.948964, 41.6],
+                                         longitude_deg=[179.621188, -90.0])  # fmt: skip
+    case, findings, _ = read(workbook(counties=counties))
+    assert "02016" in case.outlines
+    assert "geoid-elsewhere" not in {finding.code for finding in findings}
+
+
+def test_a_geoid_elsewhere_does_not_give_its_area(workbook, tables):
+    counties = tables["counties"].assign(county_id=["06037", "B2"], area_km2=[np.nan, 900.0])
+    _, findings, _ = read(workbook(counties=counties))
+    missing = [(finding.code, finding.quantity) for finding in findings if finding.code == "value-missing"]
+    assert missing == [("value-missing", "area_km2")]
+    assert "geoid-unknown" not in {finding.code for finding in findings}
 
 
 def test_blank_place_of_a_county_without_geoid_is_an_error_at_its_cell(workbook, tables):
