@@ -18,6 +18,7 @@ if TYPE_CHECKING:
 
     from etflux.case import Case, Settings
 
+FARTHEST_DEG = 360.0  # a longitude beyond it is none
 LEAST_TOP_M = 1500.0
 STEEPEST_FALL_K_KM = 12.0  # temperature: beyond it a level is doubtful, dry adiabatic is 9.8
 HIGHEST_FIRST_LEVEL_M = 60.0
@@ -90,6 +91,8 @@ def _site_and_time(
     site = place(rows)
     if site is None:
         return [Finding("profile-place", "profiles", first, "latitude_deg", None, about)]
+    if abs(site[1]) > FARTHEST_DEG:  # out of range, said by the reader; it has no hour of the day
+        return []
     date, hour = local_solar(time, site[1])
     shown = str(time)[:16]
     if not is_morning(date, hour, site[0]):

@@ -92,15 +92,16 @@ def read(path: Path, largest_bytes: int | None = LARGEST_FILE_BYTES) -> dict[str
 
 def _from_topology(document: Mapping[str, Any], file_name: str) -> dict[str, Outline]:
     try:
-        return from_topojson(document, next(iter(document["objects"])))
+        with np.errstate(over="ignore", invalid="ignore"):  # what is not finite is refused afterwards
+            return from_topojson(document, next(iter(document["objects"])))
     except (KeyError, IndexError, TypeError, ValueError, AttributeError, StopIteration, OverflowError) as error:
         raise CannotRead(f"{file_name}: is broken TopoJSON. Save the outlines as GeoJSON or a shapefile.") from error
 
 
 def from_topojson(topology: Mapping[str, Any], layer: str) -> dict[str, Outline]:
     """Outlines of one layer of a TopoJSON document, whose shared arcs stay shared to the last bit."""
-    scale = np.asarray(topology.get("transform", {}).get("scale", (1.0, 1.0)))
-    shift = np.asarray(topology.get("transform", {}).get("translate", (0.0, 0.0)))
+    scale = np.asarray(topology.get("transform", {}).get("scale", (1.0, 1.0)), dtype=float)
+    shift = np.asarray(topology.get("transform", {}).get("translate", (0.0, 0.0)), dtype=float)
     quantized = "transform" in topology
     arcs = [
         (np.cumsum(arc, axis=0) if quantized else np.asarray(arc, dtype=float))[:, :2] * scale + shift
@@ -311,9 +312,9 @@ def area_and_centroid(outline: Outline) -> tuple[float, float, float]:
             km2, x, y = _ring_moments(ring)
             sign = math.copysign(1.0, km2) * (1.0 if position == 0 else -1.0)
             total, mx, my = total + sign * km2, mx + sign * x, my + sign * y
-    if total == 0.0:
+    if total <= 0.0 or abs(my) > total:  # nothing inside, or holes that reach out of it
         north = np.concatenate([ring[:, 1] for polygon in outline.polygons for ring in polygon])
-        return 0.0, float(north.mean()), float(east.mean())
+        return max(total, 0.0), float(north.mean()), float(east.mean())
     longitude = (math.degrees(mx / total) + 180.0) % 360.0 - 180.0
     return float(total), math.degrees(math.asin(my / total)), longitude
 

@@ -191,3 +191,21 @@ def test_missing_file_and_broken_shapefile(tmp_path):
     (tmp_path / "bad.shp").write_bytes(b"nothing")
     with pytest.raises(CannotRead, match="not a readable shapefile"):
         outlines.read(tmp_path / "bad.shp")
+
+
+def test_holes_that_reach_out_of_the_outline_never_crash_the_measuring(tmp_path):
+    bent = [[-95.0, 41.0], [-1.0, 41.0], [-94.0, 42.0], [1.0, 42.0], [-95.0, 41.0]]
+    found = outlines.read(_file(tmp_path / "b.geojson", _feature("a", bent, bent)))["a"]
+    area, latitude, longitude = area_and_centroid(found)
+    assert area == pytest.approx(0.0, abs=1.0)
+    assert 41.0 <= latitude <= 42.0
+    assert -95.0 <= longitude <= 1.0
+
+
+def test_broken_numbers_of_a_topology_are_said(tmp_path):
+    for change in ({"scale": [0.5, 10**400]}, {"scale": 1e308}, {"translate": [None, 41]}):
+        text = json.loads(_topology(arcs=[[0]], points=[[2, 2], [2, 2], [-2, 2]]))
+        text["transform"] = {"scale": [0.5, 0.5], "translate": [-95, 41]} | change
+        (tmp_path / "t.json").write_text(json.dumps(text))
+        with pytest.raises(CannotRead, match=r"broken TopoJSON|not in degrees"):
+            outlines.read(tmp_path / "t.json")
