@@ -42,7 +42,7 @@ METRIC_COLUMNS = (
 def _blank(columns: tuple[str, ...]) -> pd.DataFrame:
     import pandas as pd
 
-    return pd.DataFrame(columns=list(columns))
+    return pd.DataFrame(columns=list(columns)).astype({"date": "datetime64[ns]"})
 
 
 @dataclass(frozen=True)
