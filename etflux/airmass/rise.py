@@ -111,7 +111,7 @@ def terms(inputs: AirInputs, course: Course, found: dict[str, np.ndarray], hour:
     water = day.water_mm.sum(axis=1)
     with_water = before + water * course.energy.water_after[:, hour] / mass
     an_hour = np.diff(course.energy.water_share)[:, hour - 1] * water / SECONDS_PER_HOUR
-    sensible = course.energy.own[:, hour - 1] * 1e6 / SECONDS_PER_HOUR
+    sensible = course.energy.used[:, hour - 1] * 1e6 / SECONDS_PER_HOUR  # the heat that mixes the layer, never below 0
     u2 = np.full(len(mass), DEFAULT_U2_M_S) if inputs.u2_m_s is None else inputs.u2_m_s[day.number]
     excess = near_ground_excess(an_hour, sensible, u2, found["mixing_depth_m"], found["theta_mixed_c"], pressure)
     mixed = found["humidity_mixed_g_kg"] / 1000.0

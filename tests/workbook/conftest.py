@@ -111,6 +111,7 @@ def good_tables():
              "wind_speed_m_s": [4.0, np.nan], "wind_from_deg": [190.0, np.nan], "u_m_s": [np.nan, 1.0],
              "v_m_s": [np.nan, 3.0]}
         ),
+        "background_air": pd.DataFrame({"date": DAYS[[19, 20]], "background_dew_point_c": [6.5, 9.0]}),
         "soils": pd.DataFrame(
             {"soil_id": ["my_loam"], "name": ["My loam"], "theta_fc": [0.3], "theta_wp": [0.14], "rew_mm": [9.0],
              "evaporation_depth_m": [0.1], "hydrologic_group": ["B"], "source": ["made up"]}

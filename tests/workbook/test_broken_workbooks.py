@@ -565,6 +565,11 @@ BROKEN = [
     Broken("profile not rising", put("Profiles", F6=100.0), {("Profiles", "F6", "profile-not-rising")}),
     Broken("profile humidity missing", put("Profiles", I6=None), {("Profiles", "I6", "profile-humidity")}),
     Broken("wind without direction", put("Wind", F4=None), {("Wind", "E4", "wind-incomplete")}),
+    Broken(
+        "background air twice", put("Background air", A5=D(2031, 6, 20)), {("Background air", "A5", "row-repeated")}
+    ),
+    Broken("background air too moist", put("Background air", B4=31.0), {("Background air", "B4", "range")}),
+    Broken("background air in words", put("Background air", B4="dry"), {("Background air", "B4", "text-for-number")}),
     Broken("gauge twice", put("Rain gauges", B5=D(2031, 6, 1)), {("Rain gauges", "B5", "row-repeated")}),
     Broken("gauge negative", put("Rain gauges", C5=-2.0), {("Rain gauges", "C5", "rain-negative")}),
     # --- settings ---
@@ -628,6 +633,7 @@ BROKEN = [
         "units setting against headings",
         setting("Units for people", "us"),
         {
+            ("Background air", "B3", "unit-other-system"),
             ("Counties", "E3", "unit-other-system"),
             ("Covers", "N3", "unit-other-system"),
             ("Irrigation dates", "C3", "unit-other-system"),
