@@ -13,6 +13,8 @@ if TYPE_CHECKING:
 
     from etflux.findings import Finding
     from etflux.results import Results
+    from etflux.variables import System
+    from etflux.workbook.report_brief import Picture
 
     Progress = Callable[[str, float], None]
 
@@ -81,11 +83,34 @@ def run_workbook(
     write_folder(
         results,
         folder,
-        workbook_writer=lambda given, where: write_report(given, where, on=day),
+        workbook_writer=lambda given, where: write_report(given, where, on=day, picture=map_picture(given, day)),
         progress=lambda step, share: tell(step, 0.6 + 0.4 * share),
         others=others,
     )
     return results
+
+
+def map_picture(results: Results, on: str | dt.date | None = None) -> Picture:
+    """Map of the brief: what the crops added, or the counties' water use on a day without a number for it."""
+    from io import BytesIO
+
+    import numpy as np
+
+    from etflux.brief.maps import map_inset
+    from etflux.brief.quantities import shown_of
+    from etflux.workbook.report_brief import Picture
+
+    day = results.day(on)
+    added = results.county["contribution_c"].sel(date=day) if "contribution_c" in results.county else np.array(np.nan)
+    shown = shown_of("contribution_c" if np.isfinite(added).any() else "et_county_mm")
+    system: System = "us" if results.settings.get("units") == "us" else "si"
+    figure = map_inset(results, shown, np.array([day]), system=system)
+    store = BytesIO()
+    figure.savefig(store, format="png", dpi=200)
+    width, height = figure.get_size_inches()
+    hatched = "; hatched: a range only, or no value" if shown.ranked else ""
+    title = f"{shown.heading(system)}. Triangles: stations; arrows: wind by day{hatched}"
+    return Picture(store.getvalue(), 96.0 * width, 96.0 * height, title)
 
 
 def moved_days(results: Results, folder: Path) -> pd.DataFrame | None:

@@ -412,3 +412,19 @@ def test_convective_energy_is_told_in_two_sentences_where_it_was_asked_for(basin
     assert "CAPE" in text or "convective" in text
     quiet = run_case(Case(with_settings(asked, air_cape=False), case.tables, case.source))
     assert "J/kg" not in paragraph(quiet, quiet.summary(str(last.date())), "si")
+
+
+def test_the_brief_carries_the_map_and_the_folder_the_page(written):
+    import zipfile
+
+    folder, results = written
+    with zipfile.ZipFile(folder / "results.xlsx") as archive:
+        pictures = [name for name in archive.namelist() if name.endswith(".png")]
+        drawing = archive.read("xl/drawings/drawing1.xml").decode()
+    assert len(pictures) == 1
+    assert "Contribution to the dew point (°C)" in drawing
+    page = (folder / "brief.html").read_text(encoding="utf-8")
+    assert len(page) < 3e6
+    assert results.run_id in page
+    manifest = json.loads((folder / "run.json").read_text())
+    assert "brief.html" in manifest["files"]

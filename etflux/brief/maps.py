@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 from typing import TYPE_CHECKING, Any, Literal, NamedTuple
 
 import numpy as np
@@ -100,6 +101,29 @@ def county_map(
     draw_key(figure, side, under, size, {name: text for name, text in words.items() if name in marks})
     if ends:
         _draw_ends(figure, small, land, ends, shown, unranked, size, system, scale)
+    return figure
+
+
+def map_inset(results: Results, shown: Shown, days: np.ndarray, *, system: System, width_in: float = 4.6) -> Figure:
+    """A small map with its scale alone, to stand on a sheet that has title, key and cautions.
+
+    Counties that are not ranked or have no value are hatched as on the large map.
+    """
+    size = replace(style.INSET, width_in=width_in)
+    land = land_of(results)
+    (panel,) = _panels(results, shown, days, None, system)
+    scale_height, margin = 0.36, 0.03
+    height = min(width_in * land.shape, 0.95 * width_in) + scale_height + 0.08
+    figure = style.new_figure(size, height)
+    figure.set_size_inches(width_in, height)
+    colours = scale_of([panel.values], shown, system)
+    wide = width_in - 2.0 * margin
+    place = Box(margin, scale_height, wide, height - scale_height - margin)
+    axes = place.axes(figure)
+    _draw_panel(axes, place, land, panel, colours, unranked_counties(results, shown, days), size, "W")
+    _draw_weather(axes, results, land, days, size)
+    _write_values(axes, results, land, panel.values, place, size, colours, shown.decimals(system))
+    draw_scale(figure, Box(margin, 0.0, wide, scale_height - 0.04), size, "", colours)
     return figure
 
 

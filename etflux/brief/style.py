@@ -78,6 +78,7 @@ SIZES: Mapping[str, Size] = {
     "slide": Size("slide", 40.0 / 3.0, 7.5, 15.0, 144),
     "page": Size("page", 7.0, 5.6, 8.5, 200),
 }
+INSET = Size("inset", 4.6, 3.2, 8.5, 150)  # on a page among other things: a map and its scale, no words of its own
 
 
 @dataclass(frozen=True)

@@ -14,7 +14,7 @@ from typing import TYPE_CHECKING
 
 from etflux.variables import System
 from etflux.workbook import report_air, report_days, report_tables
-from etflux.workbook.report_brief import write_brief
+from etflux.workbook.report_brief import Picture, write_brief
 from etflux.workbook.report_sheet import TableSheet
 from etflux.workbook.report_style import Look, set_page
 from etflux.workbook.report_words import clean_text, identity_line
@@ -30,7 +30,9 @@ SHEETS = (
 )  # fmt: skip
 
 
-def write_report(results: Results, path: Path | str, on: dt.date | str | None = None) -> None:
+def write_report(
+    results: Results, path: Path | str, on: dt.date | str | None = None, picture: Picture | None = None
+) -> None:
     """Write the results workbook.
 
     Parameters
@@ -41,6 +43,8 @@ def write_report(results: Results, path: Path | str, on: dt.date | str | None = 
         File to make.
     on : date, optional
         Day of the brief; the setting's, else the last day of the run.
+    picture : Picture, optional
+        A map for the brief.
 
     Raises
     ------
@@ -62,14 +66,14 @@ def write_report(results: Results, path: Path | str, on: dt.date | str | None = 
     )
     filled = False
     try:
-        _write_sheets(results, book, system, day)
+        _write_sheets(results, book, system, day, picture)
         filled = True
     finally:
         book.fileclosed = not filled  # else the library would still save what there is, when it is thrown away
     _close(book)
 
 
-def _write_sheets(results, book: Workbook, system: System, day) -> None:  # type: ignore[no-untyped-def]
+def _write_sheets(results, book: Workbook, system: System, day, picture) -> None:  # type: ignore[no-untyped-def]
     look = Look(book)
     book.set_properties(
         {"title": clean_text(results.settings.get("title")) or "Crop water use", "comments": identity_line(results)}
@@ -77,7 +81,7 @@ def _write_sheets(results, book: Workbook, system: System, day) -> None:  # type
     sheets = {name: book.add_worksheet(name, worksheet_class=TableSheet) for name in SHEETS}
     for name in SHEETS[1:]:
         set_page(sheets[name], system, identity_line(results))
-    write_brief(results, book, sheets["Brief"], look, system, day)
+    write_brief(results, book, sheets["Brief"], look, system, day, picture)
     if results.county.sizes["date"]:
         report_air.crop_moisture(results, sheets["Crop moisture"], look, system, day)
         report_air.how_sure(results, sheets["How sure"], look, system, day)

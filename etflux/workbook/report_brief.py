@@ -6,6 +6,8 @@ reads a number without its doubt; the season and the episode as charts; what the
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+from io import BytesIO
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -49,7 +51,7 @@ if TYPE_CHECKING:
 
     from etflux.results import Results
 
-WIDTHS = (17, 8, 9, 8, 8, 8, 10, 8, 8, 12, 16, 1.5, 9, 9, 9, 9, 9)
+WIDTHS = (17, 8, 9, 8, 8, 8, 10, 8, 8, 12, 16, 1.5, 10.5, 10.5, 10.5, 10.5, 10.5)
 LAST_OF_TABLE, CHART_COLUMN, LAST = 10, 12, len(WIDTHS) - 1
 TILES = ((0, 1), (2, 4), (5, 7), (8, 9), (10, 12), (13, LAST))
 MOST_COUNTIES = 30
@@ -59,12 +61,24 @@ STAND_COLUMNS = (
     "Stand", "Cover", "Growth stage", "Crop water use", "Water left", "Irrigation need", "Days to stress", "Marked",
 )  # fmt: skip
 ROW_POINTS, ROW_PIXELS = 15.75, 21
+PIXELS_PER_CHARACTER = 7.4
 HEADING_POINTS = 40.0
 
 
+@dataclass(frozen=True)
+class Picture:
+    """A picture for the brief: PNG, its size in pixels of the screen at full size, and what it shows."""
+
+    png: bytes
+    width: float
+    height: float
+    title: str
+
+
 def write_brief(
-    results: Results, book: Workbook, sheet: Worksheet, look: Look, system: System, day: np.datetime64
-) -> None:
+    results: Results, book: Workbook, sheet: Worksheet, look: Look, system: System, day: np.datetime64,
+    picture: Picture | None = None,
+) -> None:  # fmt: skip
     """Write the brief and, on a sheet of their own, the numbers of its charts."""
     numbers = results.summary(str(day))
     set_page(sheet, system, identity_line(results))
@@ -83,7 +97,7 @@ def write_brief(
     if few:
         end = _stand_table(results, sheet, look, system, day, end + 1)
     charts = charts_of(results, book, look, system, day)
-    end = _place_charts(sheet, charts, few, end)
+    end = _place_charts(sheet, look, charts, picture, few, end)
     end = _foot(sheet, look, end + 1, legend)
     sheet.print_area(0, 0, end, LAST)
 
@@ -294,22 +308,50 @@ def _short_of_water(results: Results, day: np.datetime64) -> tuple[list[int], li
     return counts["sum"].tolist(), counts["size"].tolist()
 
 
-def _place_charts(sheet: Worksheet, charts: list[Chart], few: bool, end: int) -> int:
-    """Beside the table, one above the other; below it, side by side, when there are few counties."""
+def _place_charts(
+    sheet: Worksheet, look: Look, charts: list[Chart], picture: Picture | None, few: bool, end: int
+) -> int:
+    """Map and charts beside the table, one above the other; below it, side by side, when there are few counties."""
+    number = len(charts) + (picture is not None)
+    if not number:
+        return end
     if few:
-        width, height = sum(WIDTHS) * 7.4 / 2.0, 16 * ROW_PIXELS
-        for position, chart in enumerate(charts):
-            chart.set_size({"width": width, "height": height})
-            sheet.insert_chart(end + 1, 0 if position == 0 else 7, chart, {"object_position": 2})
-        return end + 18 if charts else end
-    rows = max(end - 8, 24)
-    half = (HEADING_POINTS / ROW_POINTS + rows - 1) * ROW_PIXELS / 2.0
+        width, height = sum(WIDTHS) * PIXELS_PER_CHARACTER / number, 16.0 * ROW_PIXELS
+        if picture:
+            _place_picture(sheet, look, picture, end + 1, 0, width - 10.0, height - ROW_PIXELS)
+        for position, chart in enumerate(charts, number - len(charts)):
+            chart.set_size({"width": width - 10.0, "height": height})
+            sheet.insert_chart(end + 1, 0, chart, {"x_offset": position * width, "object_position": 2})
+        return end + 18
+    width = sum(WIDTHS[CHART_COLUMN:]) * PIXELS_PER_CHARACTER
+    top, rows = 8, max(end - 8, 30 if picture else 24)
+    left = (HEADING_POINTS / ROW_POINTS + rows - 1) * ROW_PIXELS
+    start = 0.0
+    if picture:
+        start = HEADING_POINTS / ROW_POINTS * ROW_PIXELS
+        start += _place_picture(sheet, look, picture, top, CHART_COLUMN, width, 0.42 * left) + 8.0
+    each = (left - start) / max(len(charts), 1)
     for position, chart in enumerate(charts):
-        chart.set_size({"width": 5 * 68, "height": half - 6})
-        sheet.insert_chart(
-            8, CHART_COLUMN, chart, {"y_offset": position * half, "object_position": 2, "x_offset": 0}
-        )  # fmt: skip
-    return 8 + rows
+        chart.set_size({"width": width, "height": each - 6.0})
+        sheet.insert_chart(top, CHART_COLUMN, chart, {"y_offset": start + position * each, "object_position": 2})
+    return top + rows
+
+
+def _place_picture(
+    sheet: Worksheet, look: Look, picture: Picture, row: int, column: int, width: float, height: float
+) -> float:
+    """Title in a row, the picture from the next one, as large as fits; gives its height in pixels."""
+    last = LAST if column else 4
+    sheet.merge_range(row, column, row, last, picture.title, look.wrapped(bold=True, font_size=9))
+    if not column:
+        sheet.set_row(row, ROW_POINTS)
+    scale = min(width / picture.width, height / picture.height)
+    sheet.insert_image(
+        row + 1, column, "map.png",
+        {"image_data": BytesIO(picture.png), "x_scale": scale, "y_scale": scale, "object_position": 2,
+         "description": picture.title},
+    )  # fmt: skip
+    return scale * picture.height
 
 
 def _foot(sheet: Worksheet, look: Look, row: int, legend: list[str]) -> int:

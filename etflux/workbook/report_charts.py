@@ -140,6 +140,6 @@ def _dress(chart: Chart, title: str, shape: str = "0") -> None:
     grid = {"visible": True, "line": {"color": "#DDE2E5", "width": 0.5}}
     font = CHART_FONT
     chart.set_y_axis({"num_format": shape, "num_font": font, "major_gridlines": grid, "line": {"none": True}, "min": 0})
-    chart.set_legend({"position": "bottom", "font": CHART_FONT})
+    chart.set_legend({"position": "right", "font": CHART_FONT})
     chart.set_chartarea({"border": {"none": True}})
     chart.show_blanks_as("gap")
