@@ -90,8 +90,8 @@ def run_workbook(
     return results
 
 
-def map_picture(results: Results, on: str | dt.date | None = None) -> Picture:
-    """Map of the brief: what the crops added, or the counties' water use on a day without a number for it."""
+def map_picture(results: Results, on: str | dt.date | None = None) -> Picture | None:
+    """Map of the brief: what the crops added, or the water use on a day without a number for it; none of one county."""
     from io import BytesIO
 
     import numpy as np
@@ -100,6 +100,8 @@ def map_picture(results: Results, on: str | dt.date | None = None) -> Picture:
     from etflux.brief.quantities import shown_of
     from etflux.workbook.report_brief import Picture
 
+    if results.county.sizes["county_id"] < 2:
+        return None
     day = results.day(on)
     added = results.county["contribution_c"].sel(date=day) if "contribution_c" in results.county else np.array(np.nan)
     shown = shown_of("contribution_c" if np.isfinite(added).any() else "et_county_mm")

@@ -344,7 +344,7 @@ def _place_picture(
     last = LAST if column else 4
     sheet.merge_range(row, column, row, last, picture.title, look.wrapped(bold=True, font_size=9))
     if not column:
-        sheet.set_row(row, ROW_POINTS)
+        sheet.set_row(row, 1.7 * ROW_POINTS)
     scale = min(width / picture.width, height / picture.height)
     sheet.insert_image(
         row + 1, column, "map.png",

@@ -162,6 +162,9 @@ for (const station of data.stations) {
   const { x, y } = station;
   make("path", { d: `M${x},${y - 9}L${x + 8},${y + 6}L${x - 8},${y + 6}Z` }, $("stations"));
 }
+const LABELS_UP_TO = 60; // counties; beyond, the numbers would cover the map
+const labels = data.counties.length > LABELS_UP_TO ? [] : data.counties.map((county) => make("text",
+  { x: county.x, y: county.y - 8, "text-anchor": "middle" }, $("labels")));
 const arrows = wind ? data.counties.map(() => make("line", { "marker-end": "url(#head)" }, $("arrows"))) : [];
 
 function tipText(place) {
@@ -237,10 +240,15 @@ function drawMap() {
     arrow.style.display = draw ? "" : "none";
     if (!draw) return;
     const reach = Math.min(14 + 3 * length, 44) / length / 2;
+    const below = county.y + (labels.length ? 22 : 0);
     arrow.setAttribute("x1", county.x - reach * east);
-    arrow.setAttribute("y1", county.y + reach * north);
+    arrow.setAttribute("y1", below + reach * north);
     arrow.setAttribute("x2", county.x + reach * east);
-    arrow.setAttribute("y2", county.y - reach * north);
+    arrow.setAttribute("y2", below - reach * north);
+  });
+  labels.forEach((label, place) => {
+    const number = si(row.name, state.day, place);
+    label.textContent = Number.isNaN(number) ? "" : shown(row, people(row, number));
   });
   $("wind-key").hidden = !wind || !arrows.some((arrow) => arrow.style.display !== "none");
   drawScale(row, low, high);
