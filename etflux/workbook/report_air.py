@@ -196,17 +196,33 @@ def how_sure(results: Results, sheet: TableSheet, look: Look, system: System, da
     rises = (
         ("rise_observed_c", "Observed"), ("rise_mixing_c", "by mixing"), ("rise_same_day_c", "by the day's own water"),
         ("rise_near_ground_c", "near-ground excess"), ("rise_other_c", "the rest"),
-        ("estimate_error_c", "Estimate less observed"), ("estimate_bias_c", "its mean of 7 days"),
     )  # fmt: skip
     if any(np.isfinite(values(county, name)).any() for name, _ in rises):
         columns += [
             number(name, values(county, name)[order], system, "Dew point, morning to afternoon", heading)
             for name, heading in rises
         ]
+    columns += _estimate_columns(results, order, system, day)
     columns.append(number("profile_distance_km", values(county, "profile_distance_km")[order], system, "Rests on",
                           "Balloon profile at"))  # fmt: skip
     columns.append(words("Remarks", each(flags[order], "air"), "Rests on", width=60))
     write_table(sheet, look, row, columns, frozen=2)
+
+
+def _estimate_columns(results: Results, order: np.ndarray, system: System, day: np.datetime64) -> list[Column]:
+    """How far the estimate was off on the day before, and on the seven days before."""
+    before = results.dates < day
+    if not before.any():
+        return []
+    yesterday = values(results.county, "estimate_error_c", results.dates[before][-1])
+    bias = values(results.county, "estimate_bias_c", day)
+    if not (np.isfinite(yesterday).any() or np.isfinite(bias).any()):
+        return []
+    block = "Estimated afternoon dew point less observed"
+    return [
+        number("estimate_error_c", yesterday[order], system, block, "the day before"),
+        number("estimate_bias_c", bias[order], system, block, "mean of 7 days before"),
+    ]
 
 
 def _varied_columns(results: Results, ids: np.ndarray, system: System, day: np.datetime64) -> list[Column]:

@@ -30,6 +30,7 @@ const flags = unpack(data.flags.bits);
 const byCover = unpack(data.byCover);
 const byAge = unpack(data.byAge);
 const wind = data.wind && { east: unpack(data.wind.east), north: unpack(data.wind.north) };
+const off = Object.fromEntries(Object.entries(data.off).map(([name, packed]) => [name, unpack(packed)]));
 const standLines = Object.fromEntries(Object.entries(data.stands.values).map(([name, packed]) => [name, unpack(packed)]));
 const hourly = data.hours && Object.fromEntries(
   Object.entries(data.hours.values).map(([name, packed]) => [name, unpack(packed)]));
@@ -514,9 +515,22 @@ function drawCounty() {
   const said = remarks(state.day, state.county);
   $("county-text").textContent = `${row.label}: ${withUnit(row, people(row, si(row.name, state.day, state.county)))}. `
     + `How sure of the contribution: ${sureWords(state.day, state.county)}${said.length ? ` (${said.join("; ")})` : ""}.`;
+  $("off-text").textContent = offWords();
   drawHours();
   drawEpisode();
   drawSeason();
+}
+
+// How far the estimate was off where it could be checked.
+function offWords() {
+  const row = data.units.contribution_c;
+  const at = (name, day) => (day < 0 ? NaN : off[name].at(day * data.counties.length + state.county));
+  const words = (number) => `${shown(row, Math.abs(change(row, number)))} ${unitOf(row)} ${number < 0 ? "below" : "above"}`;
+  const [yesterday, bias] = [at("error", state.day - 1), at("bias", state.day)];
+  const parts = [];
+  if (!Number.isNaN(yesterday)) parts.push(`on the day before ${words(yesterday)} the observed one`);
+  if (!Number.isNaN(bias)) parts.push(`as the mean of the seven days before ${words(bias)} it`);
+  return parts.length ? `The estimated afternoon dew point was ${parts.join(", ")}.` : "";
 }
 
 // --- what people do ---

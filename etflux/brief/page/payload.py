@@ -80,6 +80,7 @@ def payload(results: Results, day: np.datetime64) -> dict[str, Any]:
         "byCover": _pack(_contribution(results, sources, "cover"), 3),
         "byAge": _pack(_contribution(results, list(range(AGES)), "age_d"), 3),
         "wind": _wind(results),
+        "off": {name: _pack(values(results.county, f"estimate_{name}_c"), 2) for name in ("error", "bias")},
         "units": _units(),
     }
     return found | _hours(results) | _stands(results)
