@@ -28,6 +28,7 @@ METRICS_FILE, PAIRS_FILE = "comparison.csv", "comparison_pairs.csv"
 WORKBOOK, PAGE = "comparison.xlsx", "comparison.html"
 DECIMALS = 6
 MOST_FIGURES = 12  # places and quantities drawn; the tables have all
+FIGURE_ROWS = 30  # of the workbook, for one figure
 WORDS = {
     "place": "Place", "quantity": "Quantity", "unit": "Unit", "series": "Series", "group": "Days by", "which": "Which",
     "n": "Pairs", "bias": "Bias", "rmse": "RMSE", "r_squared": "r²", "slope_through_origin": "Slope through origin",
@@ -72,7 +73,7 @@ def write_comparison(results: Results, comparison: Comparison, folder: Path | st
             drawn = _draw(results, comparison, scratch)
             _csv(comparison.metrics, scratch / METRICS_FILE)
             _csv(comparison.pairs, scratch / PAIRS_FILE)
-            _workbook(results, comparison, scratch / WORKBOOK)
+            _workbook(results, comparison, scratch, drawn)
             (scratch / PAGE).write_text(_page(results, comparison, scratch, drawn), encoding="utf-8")
             for path in sorted(scratch.iterdir()):
                 os.replace(path, folder / path.name)
@@ -113,14 +114,14 @@ def _csv(frame: pd.DataFrame, path: Path) -> None:
     _shown(frame).round(DECIMALS).to_csv(path, index=False, lineterminator="\n", encoding="utf-8")
 
 
-def _workbook(results: Results, comparison: Comparison, path: Path) -> None:
+def _workbook(results: Results, comparison: Comparison, folder: Path, drawn: list[str]) -> None:
     import xlsxwriter
 
     from etflux.workbook.report_style import Look, set_page
 
     system: System = "us" if results.settings.get("units") == "us" else "si"
     options = {"strings_to_formulas": False, "strings_to_urls": False, "strings_to_numbers": False}
-    with xlsxwriter.Workbook(str(path), options) as book:
+    with xlsxwriter.Workbook(str(folder / WORKBOOK), options) as book:
         look = Look(book)
         for title, lead, frame in (
             ("Agreement", "How well the run agrees with what was measured; SI units.", comparison.metrics),
@@ -131,6 +132,12 @@ def _workbook(results: Results, comparison: Comparison, path: Path) -> None:
             sheet.write_string(1, 0, lead, look.lead())
             _rows(sheet, look, frame)
             sheet.freeze_panes(4, 4)
+            set_page(sheet, system, f"Run {results.run_id}, etflux {results.version}, {comparison.file}")
+        if drawn:
+            sheet = book.add_worksheet("Figures")
+            for number, stem in enumerate(drawn):
+                place = {"x_scale": 0.5, "y_scale": 0.5, "description": stem}
+                sheet.insert_image(number * FIGURE_ROWS, 0, str(folder / f"{stem}.png"), place)
             set_page(sheet, system, f"Run {results.run_id}, etflux {results.version}, {comparison.file}")
 
 

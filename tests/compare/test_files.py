@@ -33,7 +33,10 @@ def test_every_file_is_there_and_says_the_same(run, two_series, tmp_path):
     assert "'=closed" in set(metrics["series"])
     pairs = pd.read_csv(tmp_path / "out" / "comparison_pairs.csv")
     assert len(pairs) == 240
-    sheet = openpyxl.load_workbook(tmp_path / "out" / "comparison.xlsx")["Agreement"]
+    book = openpyxl.load_workbook(tmp_path / "out" / "comparison.xlsx")
+    assert book.sheetnames == ["Agreement", "Pairs", "Figures"]
+    assert len(book["Figures"]._images) == 2
+    sheet = book["Agreement"]
     headings = [cell.value for cell in sheet[4]]
     bias = [row[headings.index("Bias")].value for row in sheet.iter_rows(min_row=5)]
     assert bias[0] == pytest.approx(found.metrics["bias"].iloc[0])
