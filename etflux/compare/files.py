@@ -28,7 +28,7 @@ METRICS_FILE, PAIRS_FILE = "comparison.csv", "comparison_pairs.csv"
 WORKBOOK, PAGE = "comparison.xlsx", "comparison.html"
 DECIMALS = 6
 MOST_FIGURES = 12  # places and quantities drawn; the tables have all
-FIGURE_ROWS = 30  # of the workbook, for one figure
+FIGURE_ROWS = 24  # of the workbook, for one figure
 WORDS = {
     "place": "Place", "quantity": "Quantity", "unit": "Unit", "series": "Series", "group": "Days by", "which": "Which",
     "n": "Pairs", "bias": "Bias", "rmse": "RMSE", "r_squared": "r²", "slope_through_origin": "Slope through origin",
@@ -41,7 +41,7 @@ WORDS = {
 }  # fmt: skip
 _STYLE = """body{font:15px/1.45 Arial,sans-serif;color:#22303c;max-width:75em;margin:1.5em auto;padding:0 1em}
 table{border-collapse:collapse;font-size:13px}th,td{padding:.25em .7em;border-bottom:1px solid #dde2e5;text-align:right}
-th{background:#e4e9ec}td.t,th.t{text-align:left}img{max-width:100%;height:auto}p.s{color:#5b6770}"""
+th{background:#e4e9ec}td.t,th.t{text-align:left}img{max-width:100%;height:auto}p.s{color:#5b6770}.w{overflow-x:auto}"""
 
 
 def write_comparison(results: Results, comparison: Comparison, folder: Path | str) -> Path:
@@ -138,6 +138,7 @@ def _workbook(results: Results, comparison: Comparison, folder: Path, drawn: lis
             for number, stem in enumerate(drawn):
                 place = {"x_scale": 0.5, "y_scale": 0.5, "description": stem}
                 sheet.insert_image(number * FIGURE_ROWS, 0, str(folder / f"{stem}.png"), place)
+            sheet.set_h_pagebreaks([number * FIGURE_ROWS for number in range(1, len(drawn))])
             set_page(sheet, system, f"Run {results.run_id}, etflux {results.version}, {comparison.file}")
 
 
@@ -192,7 +193,7 @@ def _table(frame: pd.DataFrame) -> str:
         f"<tr>{''.join(cell(str(name), value) for name, value in zip(frame.columns, row, strict=True))}</tr>"
         for row in frame.itertuples(index=False)
     )
-    return f"<table><thead><tr>{head}</tr></thead><tbody>{rows}</tbody></table>"
+    return f"<div class=w><table><thead><tr>{head}</tr></thead><tbody>{rows}</tbody></table></div>"
 
 
 def summary_text(comparison: Comparison, folder: Path) -> str:
