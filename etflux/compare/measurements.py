@@ -154,8 +154,10 @@ def _faults(cells: dict[str, str], row: int) -> Iterator[Finding]:
     def fault(code: str, name: str, detail: str = "") -> Finding:
         return Finding(code, TABLE, row, name, cells.get(name) or None, about, detail)
 
+    quantity = quantities().get(cells["quantity"])
     for name in ("place", "date", "quantity", "unit"):
-        if not cells[name]:
+        unitless = name == "unit" and quantity is not None and not quantity.unit
+        if not cells[name] and not unitless:
             yield fault("value-missing", name)
     if cells["date"] and _day(cells["date"]) is None:
         yield fault("date-unreadable", "date")
@@ -165,7 +167,6 @@ def _faults(cells: dict[str, str], row: int) -> Iterator[Finding]:
             yield fault("text-for-number", name)
     if _number(cells.get("uncertainty", "")) < 0.0:
         yield fault("uncertainty-negative", "uncertainty")
-    quantity = quantities().get(cells["quantity"])
     if cells["quantity"] and (quantity is None or not quantity.unit and quantity.kind == "label"):
         yield fault("measured-quantity-unknown", "quantity", _nearest(cells["quantity"], quantities()))
         quantity = None

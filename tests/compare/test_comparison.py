@@ -56,6 +56,15 @@ def test_latent_heat_is_water_and_water_latent_heat(run, rows):
     assert compare(run, measurements_from(depth)).pairs["difference"].to_numpy() == pytest.approx(0.0, abs=1e-9)
 
 
+def test_a_share_is_taken_as_it_is(run):
+    ks = run.stand["ks"].sel(unit_id="S02-1").to_numpy()
+    rows = pd.DataFrame({"place": "S02-1", "date": run.stand["date"].to_numpy(), "quantity": "ks", "value": ks - 0.1,
+                         "unit": ""})  # fmt: skip
+    found = compare(run, measurements_from(rows))
+    assert found.pairs["difference"].to_numpy() == pytest.approx(0.1)
+    assert of(found.metrics)["unit"] == ""
+
+
 def test_temperature_uncertainty_has_no_offset(run):
     rows = pd.DataFrame({"place": "N1", "date": run.station["date"].to_numpy(), "quantity": "t_max_c", "value": 80.0,
                          "unit": "°F", "uncertainty": 1.8})  # fmt: skip

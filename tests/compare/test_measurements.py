@@ -63,6 +63,13 @@ def test_one_fault(tmp_path, old, new, code, detail):
     assert len(found.rows) == 1
 
 
+@pytest.mark.parametrize("unit", ["", "-", "1"])
+def test_a_quantity_without_a_unit_needs_none(tmp_path, unit):
+    found = read(tmp_path, HEAD + f"S02-1,2031-04-02,ks,0.8,{unit},,\n")
+    assert found.findings == []
+    assert found.rows["value"].tolist() == [0.8]
+
+
 def test_all_faults_at_once(tmp_path):
     text = HEAD + "a,b,c,d,e,f,g\n" + ",,,,,,\n" + GOOD + GOOD
     codes = [finding.code for finding in read(tmp_path, text).findings]
