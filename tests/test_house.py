@@ -18,8 +18,8 @@ PACKAGE = Path(etflux.__file__).parent
 ROOMS = [
     "__init__", "variables", "findings", "humidity", "solar", "reference", "case", "outlines", "weather",
     "irrigation", "soilwater", "stands", "marks", "crops", "canopy", "counties",
-    "column", "profiles", "igra", "wind", "cells", "airmass", "convection", "air_checks", "checks", "methods", "results", "assemble",
-    "run", "workbook", "brief", "compare", "job", "cli",
+    "column", "profiles", "igra", "wind", "cells", "airmass", "convection", "air_checks", "checks", "methods",
+    "results", "assemble", "run", "workbook", "brief", "compare", "job", "cli",
 ]  # fmt: skip
 
 

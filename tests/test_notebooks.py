@@ -26,7 +26,8 @@ def test_kept_without_outputs(path):
 @pytest.mark.parametrize("path", NOTEBOOKS, ids=lambda path: path.stem)
 def test_runs_from_top_to_bottom(path):
     notebook = nbformat.read(path, as_version=4)
-    NotebookClient(notebook, timeout=300, kernel_name="python3", resources={"metadata": {"path": path.parent}}).execute()
+    place = {"metadata": {"path": path.parent}}
+    NotebookClient(notebook, timeout=300, kernel_name="python3", resources=place).execute()
     errors = [
         output
         for cell in notebook.cells

@@ -388,7 +388,8 @@ def test_with_a_station_and_the_balloon_missing_the_brief_names_what_stands_in(b
     results = run_case(with_end(case, last))
     rests = {part.name: part for part in rests_on(results, np.datetime64("2031-07-27"))}
     assert rests["Weather"].fallback
-    assert "temperature from a neighbour at 2" in rests["Weather"].text  # a morning observer has read the day only in part
+    # the other one is a morning observer, who has read the day only in part
+    assert "temperature from a neighbour at 2" in rests["Weather"].text
     assert rests["Morning air"].text.startswith("no balloon: standard profile in all counties")
     write_report(results, tmp_path / "brief.xlsx", on="2031-07-27")
     text = str(openpyxl.load_workbook(tmp_path / "brief.xlsx")["Brief"]["A8"].value)
