@@ -1,11 +1,14 @@
 """Pictures of the README, from a run of the example: python station_examples/make_pictures.py
 
 Maps and charts are drawn by etflux itself. The brief needs LibreOffice and pdftoppm, the page needs Chromium with its
-driver; where they are missing the picture stays as it is, and the script says so.
+driver, the comparison needs the folder of measurements that ETFLUX_MEASURED names; where they are missing the picture
+stays as it is, and the script says so.
 """
 
 from __future__ import annotations
 
+import importlib.util
+import os
 import shutil
 import subprocess
 import sys
@@ -28,9 +31,9 @@ def main() -> None:
         folder = Path(place) / "run"
         results = run_workbook(HERE / "harrowbend.xlsx", output=folder, on=DAY)
         figures(results)
-        for make in (brief, page):
+        for make in (brief, page, measured):
             if not make(folder):
-                print(f"{make.__name__}: what draws it is not installed; left as it is", file=sys.stderr)
+                print(f"{make.__name__}: what it needs is not here; left as it is", file=sys.stderr)
 
 
 def figures(results: Results) -> None:
@@ -84,6 +87,27 @@ def page(folder: Path) -> bool:
         window.save_screenshot(str(HERE / "page.png"))
     finally:
         window.quit()
+    return True
+
+
+def measured(folder: Path) -> bool:
+    """A season of irrigated maize beside what a flux tower measured."""
+    if not os.environ.get("ETFLUX_MEASURED"):
+        return False
+    from etflux import run_case
+    from etflux.compare import compare
+    from etflux.compare.figures import scatter, time_series
+
+    spec = importlib.util.spec_from_file_location("measured_sites", HERE.parent / "tests" / "measured" / "sites.py")
+    assert spec is not None
+    assert spec.loader is not None
+    sites = importlib.util.module_from_spec(spec)
+    sys.modules[spec.name] = sites
+    spec.loader.exec_module(sites)
+    results = run_case(sites.ne1(2004, {"surface_root_uptake": True}, only="kept"))
+    comparison = compare(results, sites.measured("ne1", results))
+    save(time_series(results, comparison, "kept", "et_mm"), HERE / "measured_days.png")
+    save(scatter(results, comparison, "kept", "et_mm"), HERE / "measured_scatter.png")
     return True
 
 
