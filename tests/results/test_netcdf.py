@@ -104,3 +104,19 @@ def test_attributes_of_second_opinions_and_hours():
     hourly = attributes_of("hourly_contribution_c")
     assert hourly["units_metadata"] == "temperature: difference"
     assert hourly["long_name"].endswith("by the hour")
+
+
+def test_contribution_by_cover_and_age_is_in_the_file_as_an_array(small, tmp_path):
+    write_netcdf(small, tmp_path / "results.nc")
+    with xr.open_dataset(tmp_path / "results.nc", engine="h5netcdf", group="contribution") as found:
+        array = found["contribution_by_cover_and_age_c"].load()
+    rows = small.table("contribution")
+    assert array.attrs["units_metadata"] == "temperature: difference"
+    for row in rows.sample(20, random_state=1).itertuples():
+        at = array.sel(date=row.date, county_id=row.county_id, cover=row.cover, age_d=row.age_d)
+        assert float(at) == pytest.approx(row.contribution_c, rel=1e-12)
+    crops = [name for name in array["cover"].to_numpy() if name != "rest"]
+    total = array.sel(cover=crops).sum(["cover", "age_d"], skipna=False)
+    there = np.isfinite(small.county["contribution_c"])
+    np.testing.assert_allclose(total.to_numpy()[there], small.county["contribution_c"].to_numpy()[there], atol=1e-9)
+    assert np.isnan(array.to_numpy()[~there.to_numpy()]).all()
