@@ -146,3 +146,20 @@ def test_a_run_without_air_has_a_page(make):
     found = numbers_of(page_text(replace(bare, county=county, contribution=blank)))
     assert "contribution_c" not in found["values"]
     assert found["sources"] == []
+
+
+def test_a_country_keeps_the_days_that_fit_and_says_so(make):
+    """800 counties and 120 days would be over 20 MB: the last days stay, and the day asked for is among them."""
+    large = make(counties=800, days=120)
+    for day, last in ((None, large.dates[-1]), (large.dates[60], large.dates[-1])):
+        found = numbers_of(page_text(large, day))
+        kept = len(found["dates"])
+        assert kept < 120
+        assert found["daysLeftOut"] == 120 - kept
+        wanted = large.dates[-1] if day is None else day
+        assert found["dates"][found["day"]] == str(wanted)
+        packed = found["values"]["et_county_mm"]
+        listed = large.county["et_county_mm"].sel(date=wanted).to_numpy()
+        np.testing.assert_allclose(unpacked(packed)[found["day"]], listed, atol=0.5 * packed["step"] + 1e-9)
+        assert len(page_text(large, day)) < 12e6
+        assert str(last) >= found["dates"][-1]

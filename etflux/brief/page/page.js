@@ -319,6 +319,8 @@ function drawWords() {
 
 // --- the table ---
 
+const ROWS_SHOWN = 400; // more rows than anybody reads make every move of the slider slow
+
 const columns = () => [
   { key: "name", title: "County" },
   { key: "value", title: `${current().label} (${unitOf(current()) || "share"})`, number: true },
@@ -374,7 +376,7 @@ function drawTable() {
   const wanted = $("filter").value.trim().toLocaleLowerCase();
   const least = Number($("sure").value);
   const kept = rows().filter((row) => row.name.toLocaleLowerCase().includes(wanted) && row.sure >= least).sort(compare);
-  const body = kept.map((row) => {
+  const body = kept.slice(0, ROWS_SHOWN).map((row) => {
     const line = document.createElement("tr");
     line.dataset.id = data.counties[row.place].id;
     line.className = `${past(row.place) ? "past" : ""} ${row.place === state.county ? "chosen" : ""}`.trim();
@@ -396,7 +398,8 @@ function drawTable() {
   });
   $("table").tHead.replaceChildren(head);
   $("table").tBodies[0].replaceChildren(...body);
-  $("caption").textContent = `${kept.length} of ${data.counties.length} counties, ${dayWords(state.day)}`;
+  const first = kept.length > ROWS_SHOWN ? `first ${ROWS_SHOWN} of ` : "";
+  $("caption").textContent = `${first}${kept.length} of ${data.counties.length} counties, ${dayWords(state.day)}`;
 }
 
 // --- the charts ---
@@ -555,6 +558,9 @@ function setDay(day) {
   draw();
 }
 
+if (data.daysLeftOut) {
+  $("left-out").textContent = `This page holds ${data.dates.length} days; ${data.daysLeftOut} more are in county_daily.csv.`;
+}
 $("quantity").replaceChildren(...data.quantities.map((row) => new Option(row.label, row.name)));
 $("units").value = state.units;
 $("sure").replaceChildren(...data.confidence.words.map((words, code) => new Option(words, code)));

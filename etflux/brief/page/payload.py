@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import base64
 from collections.abc import Mapping
+from dataclasses import replace
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -57,6 +58,8 @@ def payload(results: Results, day: np.datetime64) -> dict[str, Any]:
     dict
         Of plain values, lists and packed arrays.
     """
+    whole = len(results.dates)
+    results = _in_a_window(results, day)
     dates = results.dates
     county = {name: values(results.county, name) for name in ON_THE_MAP if name in results.county}
     county |= _of_stands(results)
@@ -68,6 +71,7 @@ def payload(results: Results, day: np.datetime64) -> dict[str, Any]:
     found: dict[str, Any] = {
         "system": "us" if results.settings.get("units") == "us" else "si",
         "dates": [str(date) for date in dates],
+        "daysLeftOut": whole - len(dates),
         "day": int(np.flatnonzero(dates == day)[0]),
         "counties": _counties(results),
         "stations": _stations(results),
@@ -84,6 +88,23 @@ def payload(results: Results, day: np.datetime64) -> dict[str, Any]:
         "units": _units(),
     }
     return found | _hours(results) | _stands(results)
+
+
+def _in_a_window(results: Results, day: np.datetime64) -> Results:
+    """Results of as many days as fit: the last ones, or those up to a day that lies before them."""
+    per_day = 2.7 * (len(ON_THE_MAP) + len(OF_STANDS) + 12) * results.county.sizes["county_id"]
+    kept = max(7, int(0.6 * MOST_BYTES / max(per_day, 1.0)))
+    dates = results.dates
+    if len(dates) <= kept:
+        return results
+    end = max(int(np.flatnonzero(dates == day)[0]) + 1, kept) if day < dates[-kept] else len(dates)
+    window = slice(end - kept, end)
+    rows = results.contribution
+    inside = rows["date"].between(dates[window][0], dates[window][-1]) if len(rows) else slice(0)
+    return replace(
+        results, county=results.county.isel(date=window), stand=results.stand.isel(date=window),
+        station=results.station.isel(date=window), contribution=rows[inside],
+    )  # fmt: skip
 
 
 def _digits(name: str) -> int:
