@@ -12,6 +12,7 @@ import pytest
 
 from etflux.brief.page import write_page
 from etflux.outlines import Outline
+from etflux.results import confidence
 from etflux.variables import from_si
 
 BROWSER = shutil.which("chromium") or shutil.which("chromium-browser") or shutil.which("google-chrome")
@@ -147,6 +148,23 @@ def test_slider_and_buttons_change_the_day(page, run):
     assert text(page, "day-text") == pd.Timestamp(run.dates[37]).strftime("%-d %B %Y")
     page.find_element("id", "before").click()
     assert table(page) == after[1]
+
+
+def test_counties_without_a_value_or_with_a_range_only_are_hatched(page, run):
+    codes = confidence(
+        *(run.county[name].isel(date=39).to_numpy() for name in ("flags", "provisional", "contribution_c"))
+    )
+    hatched = page.execute_script(
+        "return [...document.querySelectorAll('#unranked > *')].map(s => s.style.display !== 'none')"
+    )
+    assert 0 < sum(hatched) < 6
+    assert hatched == (codes <= 1).tolist()
+    put(page, "quantity", "eto_mm")
+    assert not any(
+        page.execute_script(
+            "return [...document.querySelectorAll('#unranked > *')].map(s => s.style.display !== 'none')"
+        )
+    )
 
 
 def test_chooser_changes_map_table_and_scale(page):

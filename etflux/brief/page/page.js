@@ -56,13 +56,14 @@ function shown(row, number, signed = false) {
   return (number < 0 && !zero ? "−" : "") + text;
 }
 
+const A_RANGE = data.confidence.words.indexOf("a range only");
 const unitOf = (row) => row.unit[state.units];
 const withUnit = (row, number, signed = false) => `${shown(row, number, signed)} ${unitOf(row)}`.trim();
 const current = () => quantities.get(state.quantity);
 const isContribution = () => state.quantity === "contribution_c";
 
 function unranked(county) {
-  return current().ranked && data.counties[county].represented < data.rankedFrom;
+  return current().ranked && sureCode(state.day, county) === A_RANGE;
 }
 
 function dayWords(day) {

@@ -13,7 +13,7 @@ from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from etflux.brief.quantities import QUANTITIES, county_names, represented_least_pct
+from etflux.brief.quantities import QUANTITIES, county_names
 from etflux.brief.style import PALETTES
 from etflux.outlines import EARTH_RADIUS_KM
 from etflux.results import confidence
@@ -79,7 +79,6 @@ def payload(results: Results, day: np.datetime64) -> dict[str, Any]:
         "values": packed,
         "confidence": {"words": list(CONFIDENCE.values()), "codes": _pack(rank.astype(float), 0)},
         "flags": {"words": {str(bit): text for bit, text in flag_words("air").items() if bit}, "bits": _bits(flags)},
-        "rankedFrom": represented_least_pct(results),
         "sources": [{"name": name, "colour": _colour(name, sources)} for name in sources],
         "byCover": _pack(_contribution(results, sources, "cover"), 3),
         "byAge": _pack(_contribution(results, list(range(AGES)), "age_d"), 3),
@@ -281,7 +280,6 @@ def _counties(results: Results) -> list[dict[str, Any]]:
     names = county_names(results)
     frame = _frame_of(results)
     radius = 0.7 * np.sqrt(area / np.pi) / (np.pi * EARTH_RADIUS_KM / 180.0) * frame["per_degree"]
-    represented = values(county, "represented_pct")
     listed = []
     for k, identity in enumerate(ids):
         x, y = _on_map(frame, longitude[k], latitude[k])
@@ -290,7 +288,6 @@ def _counties(results: Results) -> list[dict[str, Any]]:
             {
                 "id": identity, "name": names[k], "x": round(x, 1), "y": round(y, 1), "r": round(float(radius[k]), 1),
                 "area": round(float(area[k]), 1), "path": _path(frame, outline) if outline else "",
-                "represented": round(float(represented[0, k]), 1) if represented.size else 100.0,
             }
         )  # fmt: skip
     return listed
