@@ -164,6 +164,8 @@ for (const station of data.stations) {
   const { x, y } = station;
   make("path", { d: `M${x},${y - 9}L${x + 8},${y + 6}L${x - 8},${y + 6}Z` }, $("stations"));
 }
+const ARROW_STEP = Math.ceil(data.counties.length / 60); // more arrows than that hide the map
+$("shapes").classList.toggle("many", data.counties.length > 100);
 const LABELS_UP_TO = 60; // counties; beyond, the numbers would cover the map
 const labels = data.counties.length > LABELS_UP_TO ? [] : data.counties.map((county) => make("text",
   { x: county.x, y: county.y - 8, "text-anchor": "middle" }, $("labels")));
@@ -238,7 +240,7 @@ function drawMap() {
     const [east, north] = windOf(place);
     const county = data.counties[place];
     const length = Math.hypot(east, north);
-    const draw = length > 0.2;
+    const draw = length > 0.2 && place % ARROW_STEP === 0;
     arrow.style.display = draw ? "" : "none";
     if (!draw) return;
     const reach = Math.min(14 + 3 * length, 44) / length / 2;
