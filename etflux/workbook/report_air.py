@@ -96,6 +96,11 @@ def other_worlds(results: Results, sheet: TableSheet, look: Look, system: System
     """What if nothing but grass grew, and what if nothing evaporated."""
     county = results.county.sel(date=day)
     order = _most_first(county, "effect_of_crops_c")
+    if not np.isfinite(values(county, "effect_of_crops_c")).any():
+        row = _head(sheet, look, "Other worlds", *WORLD_SENTENCES.values())
+        why = "turned off in the settings" if not results.settings.get("air_worlds", True) else "without a number"
+        sheet.write_string(row, 0, f"They are {why} on {day_words(day)}.")
+        return
     row = _head(
         sheet, look, "Other worlds",
         f"{day_words(day)}. Not to be mixed up with what the crops added: that is tagged water, this is another run.",

@@ -389,3 +389,13 @@ def test_station_words_list_every_value_that_was_not_measured(small):
 )
 def test_text_that_a_workbook_cannot_hold_is_mended(text, expected):
     assert clean_text(text) == expected
+
+
+def test_other_worlds_that_were_not_run_say_so(make, tmp_path):
+    """A sheet of blanks would leave its reader wondering."""
+    made = make(counties=2, days=12)
+    quiet = dataclasses.replace(made, settings={**made.settings, "air_worlds": False})
+    for run, words in ((quiet, "turned off in the settings"), (made, "without a number")):
+        lines = [cell.value for cell in _written(run, tmp_path)["Other worlds"]["A"] if cell.value]
+        assert words in lines[-1]
+        assert any("effect of the crops" in line for line in lines)
