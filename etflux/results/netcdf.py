@@ -65,7 +65,8 @@ def contribution_arrays(results: Results) -> xr.Dataset:
     """The contribution's long tables as arrays: by cover and age, by county of origin, and its ranges.
 
     Dimensions (date, county_id, cover, age_d), (date, county_id, from_county_id) and (date, county_id, varied). Water
-    that is not there is 0, a county-day without a contribution NaN.
+    that is not there is 0; a county-day without a contribution, a day without origins (no wind) and what was not varied
+    are NaN.
     """
     county = results.county
     labels = {name: county[name].to_numpy() for name in ("date", "county_id")}
@@ -94,6 +95,12 @@ def contribution_arrays(results: Results) -> xr.Dataset:
         ]
         dense = np.zeros((*shape, *(len(values) for values in kinds.values())))
         np.add.at(dense, tuple(index), np.nan_to_num(table[values].to_numpy(float)))
+        given = np.zeros(dense.shape, dtype=bool)
+        given[tuple(index)] = True
+        if of == ("varied",):
+            dense[~given] = np.nan
+        elif of == ("from_county_id",):
+            dense[~given.any(axis=(1, 2))] = np.nan  # without wind nobody's origins are known: 0 would say none
         dense[np.isnan(base)] = np.nan
         dims = ("date", "county_id", *of)
         found[name] = xr.DataArray(dense, dims=dims, coords={**labels, **kinds})

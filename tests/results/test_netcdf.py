@@ -1,12 +1,14 @@
 """results.nc: opens with xarray as it is, says what every number means, holds every bit."""
 
 import warnings
+from dataclasses import replace
 
 import numpy as np
+import pandas as pd
 import pytest
 import xarray as xr
 
-from etflux.results.netcdf import attributes_of, write_netcdf
+from etflux.results.netcdf import attributes_of, contribution_arrays, write_netcdf
 from etflux.results.tables import table_names, udunits
 from etflux.variables import flag_bits, quantities, units
 
@@ -120,3 +122,20 @@ def test_contribution_by_cover_and_age_is_in_the_file_as_an_array(small, tmp_pat
     there = np.isfinite(small.county["contribution_c"])
     np.testing.assert_allclose(total.to_numpy()[there], small.county["contribution_c"].to_numpy()[there], atol=1e-9)
     assert np.isnan(array.to_numpy()[~there.to_numpy()]).all()
+
+
+def test_origins_of_a_day_without_wind_and_what_was_not_varied_are_missing_not_zero(small):
+    dates, ids = small.dates, small.county["county_id"].to_numpy().astype(str)
+    ones = np.ones(small.county["contribution_c"].shape)
+    county = small.county.assign(contribution_c=(small.county["contribution_c"].dims, ones))
+    moistened_by = pd.DataFrame({"date": dates[:1], "county_id": ids[:1], "from_county_id": ids[:1],
+                                 "contribution_c": [1.0]})  # fmt: skip
+    ranges = pd.DataFrame({"date": dates[:1], "county_id": ids[:1], "varied": ["depth"], "contribution_low_c": [0.5],
+                           "contribution_high_c": [1.5]})  # fmt: skip
+    found = contribution_arrays(replace(small, county=county, moistened_by=moistened_by, ranges=ranges))
+    origin, lowest = found["contribution_by_origin_c"], found["contribution_lowest_c"]
+    assert origin.to_numpy()[0, :, 0].tolist() == [1.0, *[0.0] * (len(ids) - 1)]
+    assert len(dates) > 1
+    assert np.isnan(origin.to_numpy()[1:]).all()
+    assert float(lowest[0, 0, 0]) == 0.5
+    assert int(np.isfinite(lowest).sum()) == 1
