@@ -4,6 +4,7 @@ import numpy as np
 import pytest
 
 from etflux import marks
+from etflux.findings import rules
 from etflux.stands import packaged
 
 CORN_F = {"emergence": 115, "cover10": 475, "v8": 600, "full_cover": 1135, "late": 2160, "maturity": 2700}
@@ -172,6 +173,7 @@ def test_planted_before_the_record(make):
     shift = make.day(whole.record, "2031-05-15")
     for name in marks.ANNUAL_MARKS:
         assert late.canopy.marks[name][0] + shift == whole.canopy.marks[name][0], name
+    assert f"first {marks.PACE_DAYS} days" in rules()["planting-before-season"].rule.replace("ten", "10")
 
 
 def test_a_season_over_new_year(make):
