@@ -104,6 +104,8 @@ def _profile(results: Results, day: np.datetime64) -> Rest:
     if standard == 0 and np.isfinite(distance).any():
         near, far = np.nanmin(distance), np.nanmax(distance)
         return Rest("Morning air", f"balloon of the day, {near:.0f} to {far:.0f} km away", False)
+    if standard == 0:
+        return Rest("Morning air", "none used: the air was not computed", False)
     if standard == n:
         return Rest("Morning air", f"no balloon: standard profile in all counties{dew}", True)
     return Rest("Morning air", f"balloon of the day; standard profile in {standard} of {n} counties{dew}", True)
