@@ -282,6 +282,14 @@ def test_crop_moisture_sheet_adds_up_by_crop_and_by_day_it_left(written, air_she
     assert any(line.startswith("27 July 2031 at 15 h local solar time") for line in lines)
 
 
+def test_at_least_is_not_the_least_that_how_sure_varies_and_the_sheet_says_so(air_sheets):
+    rows, lines = air_sheets["Crop moisture"]
+    least = rows.set_index("|County")["Afternoon|at least (°C)"].astype(float)
+    varied = air_sheets["How sure"][0].set_index("|County")["Depth ± 25 %|lowest (°C)"].astype(float)
+    assert (varied[least.index] < least).any()
+    assert any("What the sheet How sure varies may go beyond" in line for line in lines)
+
+
 def test_who_moistens_whom_sheet_gives_every_county_its_crops_share(written, air_sheets):
     rows, _ = air_sheets["Who moistens whom"]
     origins = rows[[name for name in rows if name.startswith("Crops of")]].astype(float)

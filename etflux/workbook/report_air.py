@@ -36,6 +36,11 @@ VARIED_WORDS = {
     "entrainment 0 to 0.2": "Entrainment 0 to 0.2",
 }
 
+# The two columns cover less than their headings promise: what is varied one by one often goes lower.
+ENDS_SENTENCE = (
+    "At least and at most: by the air from outside, by entrainment where the depth hangs on it, and by what no stand "
+    "represents. What the sheet How sure varies may go beyond them."
+)
 CONTRIBUTION_SENTENCE = (
     "Crops added: dew point of the mixed air less what it would be without the water that crops put there."
 )
@@ -50,6 +55,7 @@ def crop_moisture(results: Results, sheet: TableSheet, look: Look, system: Syste
         sheet, look, "Crop moisture", f"{day_words(day)} at {hour:g} h local solar time. {CONTRIBUTION_SENTENCE}",
         "Shares of one difference, in proportion to the water. What sprinklers lose on the way counts with "
         "the crops; water of the rest of the county is tagged too and does not count.",
+        ENDS_SENTENCE,
     )  # fmt: skip
     rows = contribution_on(results, [day])
     rows = rows[rows["cover"].isin(crop_sources(results))]
